@@ -65,7 +65,12 @@ def assess_with_arrays(design: Design) -> tuple[dict[str, Any], dict[str, NDArra
         "headline": headline(design, judged, frequency),
         "requirements": [_row(design, *pair) for pair in zip(design.requirements, judged, strict=True)],
         "cases": [
-            _case(design.plant_cases[index].name, frequency.cases[index], readings[index], time.cases[index].notices)
+            _case(
+                design.plant_cases[index].name,
+                frequency.cases[index],
+                readings[index],
+                time.cases[index].notices,
+            )
             for index in range(loops.count)
         ],
         "stages": stage_facts(design.compensator, readings[0]),
@@ -119,7 +124,13 @@ def _judge_all(design: Design, readings: list[dict[str, Reading]], frequency: Fr
     names = [case.name for case in design.plant_cases]
     everywhere = list(range(len(names)))
     return [
-        judge(row, readings, stable, loops, [names.index(name) for name in row.cases] if row.cases else everywhere)
+        judge(
+            row,
+            readings,
+            stable,
+            loops,
+            [names.index(name) for name in row.cases] if row.cases else everywhere,
+        )
         for row in design.requirements
     ]
 

@@ -288,9 +288,7 @@ class LaterImplementation(BaseModel):
     kind: Literal["digital", "analogue"]
 
 
-Implementation: TypeAlias = Annotated[
-    ContinuousImplementation | LaterImplementation, Field(discriminator="kind")
-]
+Implementation: TypeAlias = Annotated[ContinuousImplementation | LaterImplementation, Field(discriminator="kind")]
 
 
 class Design(Part):

@@ -12,7 +12,7 @@ from pydantic import TypeAdapter, ValidationError
 from engine.design.document import LATER_FIELDS, LATER_MODELS, Design, Model
 from engine.design.limits import Limits, too_many
 from engine.design.measures import MEASURES
-from engine.design.resolve import check_models, check_stages
+from engine.design.resolve import check_models, check_stages, factored_of
 from engine.errors import DesignError, Fault
 from engine.model.factored import Factored
 
@@ -50,8 +50,6 @@ def parse_design(data: Any, limits: Limits | None = None) -> Design:
 
 def parse_model(data: Any, limits: Limits | None = None) -> Factored:
     """Read one model by itself; faults are relative to the model."""
-    from engine.design.resolve import factored_of  # one name, needed only here
-
     limits = limits or Limits()
     if not isinstance(data, Mapping):
         raise DesignError("", f"a model must be a JSON object, is {_kind_of(data)}")
@@ -165,7 +163,7 @@ def _meaning(design: Design) -> list[Fault]:
         if getattr(design.scenario, shape).amplitude == 0:
             faults.append(Fault(f"scenario.{shape}.amplitude", "must not be 0"))
     for index, row in enumerate(design.requirements):
-        faults += [fault for fault in _requirement_faults(row, f"requirements[{index}]", names)]
+        faults += _requirement_faults(row, f"requirements[{index}]", names)
     return faults
 
 
