@@ -22,7 +22,7 @@ from engine.model.factored import ComplexArray, FloatArray
 ExactComplex: TypeAlias = tuple[Fraction, Fraction]
 """Real and imaginary part; good to 80 bits or more."""
 
-PRECISIONS_BITS = (160, 320, 640, 1280, 2560, 5120, 10240)
+PRECISIONS_BITS = (160, 320, 640, 1280)
 ACCURACY_BITS = 80
 SWEEPS = 60
 
