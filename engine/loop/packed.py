@@ -1,0 +1,54 @@
+"""Zeros and poles of several models as padded arrays, so that every case goes through one array operation."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from engine.model.factored import ComplexArray, Factored, FloatArray
+
+
+@dataclass(frozen=True, eq=False)
+class RootTable:
+    """One list of roots a case, padded: axis 0 counts the roots, so that sums run in the same order
+    whatever the padding, and a case reads the same alone and in company."""
+
+    roots: ComplexArray
+    """(k, c, 1); −1 where padded."""
+    mask: FloatArray
+    """(k, c, 1); 1 for a root, 0 for padding."""
+
+    def factors(self, s: ComplexArray) -> ComplexArray:
+        """(k, c, n): s − root, and exactly 1 where padded; s is (c, n)."""
+        return self.mask * s - self.roots
+
+    def scaled(self, scale: FloatArray) -> RootTable:
+        """The roots divided by `scale` (c,)."""
+        divided = np.where(self.mask > 0.0, self.roots / scale[:, None], -1.0)
+        return RootTable(divided, self.mask)
+
+
+def root_table(lists: Sequence[ComplexArray]) -> RootTable:
+    """Pad one list of roots a case to a common length."""
+    longest = max((len(each) for each in lists), default=0)
+    roots = np.full((longest, len(lists), 1), -1.0 + 0.0j)
+    mask = np.zeros((longest, len(lists), 1))
+    for case, each in enumerate(lists):
+        roots[: len(each), case, 0] = each
+        mask[: len(each), case, 0] = 1.0
+    return RootTable(roots, mask)
+
+
+def time_scales(models: Sequence[Factored]) -> FloatArray:
+    """(c,) power of two nearest the geometric mean of the non-zero roots [rad/s].
+
+    Dividing by a power of two is exact, and keeps products over 40 roots inside the range of a double.
+    """
+    exponents = []
+    for model in models:
+        sizes = np.abs(np.concatenate([model.zeros, model.poles]))
+        sizes = sizes[sizes > 0.0]
+        exponents.append(np.round(np.log2(sizes).mean()) if len(sizes) else 0.0)
+    return 2.0 ** np.array(exponents, dtype=np.float64)
