@@ -12,7 +12,7 @@ from engine.errors import DesignError
 Kind: TypeAlias = Literal["number", "name", "operator", "end"]
 
 _SPACE = re.compile(r"[\s\u00a0\u2009\u202f]+")
-_NUMBER = re.compile(r"(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+_NUMBER = re.compile(r"(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][-+−]?[0-9]+)?")
 _NAME = re.compile("[A-Za-z_Α-Ωα-ω][A-Za-z0-9_Α-Ωα-ω]*")
 _RAISED = re.compile("[⁰¹²³⁴⁵⁶⁷⁸⁹]+")
 _RAISED_DIGITS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹", "0123456789")
@@ -79,6 +79,7 @@ def _stranger(character: str) -> str:
 def _value(text: str, column: int) -> Fraction:
     if len(text) > _LONGEST_NUMBER:
         raise refusal(column, f"a number of {len(text)} characters is too long; 17 digits are enough")
+    text = text.replace("−", "-")
     approximate = float(text)
     if approximate in (float("inf"), 0.0):
         # Decided in floating point first: the exact 1e999999999 would fill the memory.
