@@ -10,11 +10,11 @@ from fastapi import APIRouter, Query, Request, Response
 from engine.design.assess import assess
 from engine.design.canonical import design_sha256
 from engine.design.document import Design
-from engine.design.factored_text import factored_text
 from engine.design.parse import parse_design, parse_model
 from engine.design.purposes import PURPOSES, stage_for
 from engine.design.transfer_function import root_pairs
 from engine.errors import DesignError
+from engine.model.spelling import as_text
 from server.exact_json import exact_json
 from server.export_kinds import EXPORTS, refusal_of
 from server.faults import RefusedError
@@ -102,7 +102,7 @@ def _model_parts(text: bytes, services: Services) -> dict[str, Any]:
         "zeros": root_pairs(model.zeros),
         "poles": root_pairs(model.poles),
         "dead_time_s": model.dead_time_s,
-        "text": factored_text(model),
+        "text": as_text(model),
     }
 
 
