@@ -111,7 +111,7 @@ def _proper_roots(loops: Sequence[Factored], scale: FloatArray) -> list[ComplexA
         roots, error = _aberth(characteristic, starts, live)
         roots = _conjugate(roots, live)
         with np.errstate(invalid="ignore"):
-            sure = ((error <= UNCERTAIN * np.abs(roots)) | ~live).all(axis=1)
+            sure = np.logical_and.reduce((error <= UNCERTAIN * np.abs(roots)) | ~live, axis=1)
         roots = _in_order(roots * scales[:, None], live)
         for row, case in enumerate(plain):
             exact = None if sure[row] else exact_closed_loop_roots(chosen[row])

@@ -5,11 +5,11 @@ from __future__ import annotations
 import mpmath as mp
 import numpy as np
 import pytest
-from tests.loop.random_loops import characteristic_polynomial, random_loop
 
 from engine.loop.closed_loop_roots import closed_loop_roots
 from engine.loop.loop_set import LoopSet
 from engine.model.factored import ComplexArray, Factored
+from tests.loop.random_loops import characteristic_polynomial, random_loop
 
 NOTHING = np.empty(0, dtype=np.complex128)
 UNITY = Factored(1.0, NOTHING, NOTHING)
