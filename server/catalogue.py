@@ -53,7 +53,8 @@ def routes(services: Services) -> APIRouter:
             raise RefusedError(404, f"there is no schema {name[:60]!r}; there are {', '.join(schemas)}", "name")
         return Response(exact_json(found, indent=2).body, media_type="application/schema+json")
 
-    @router.api_route("/healthz", methods=["GET", "HEAD"])
+    @router.head("/healthz", include_in_schema=False)
+    @router.get("/healthz")
     async def healthz() -> Response:
         """Whether the server answers and can store designs."""
         await services.requests.run(services.store.check)

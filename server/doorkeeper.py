@@ -45,8 +45,8 @@ class Doorkeeper:
             return
         headers = Headers(scope=scope)
         host = headers.get("host", "")
-        answer = _with_headers(send, _content_policy(host if _HOST.fullmatch(host) else ""))
         problem = self._foreign(scope, headers, host)
+        answer = _with_headers(send, _content_policy("" if problem else host))
         if problem:
             status, what = problem
             await refuse(status, what)(scope, receive, answer)
