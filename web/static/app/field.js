@@ -1,4 +1,5 @@
 import { el, freshId } from "./element.js";
+import { placeWords } from "./typed_list.js";
 
 /**
  * A labelled control with a place for what is wrong with it.
@@ -63,7 +64,7 @@ export function placeFaults(fields, faults, prefix, rest) {
     const inside = where.startsWith(prefix) ? where.slice(prefix.length).replace(/^\./, "") : null;
     const home = inside === null ? undefined : closest(fields, inside);
     if (!home) homeless.push(where ? `${where}: ${what}` : what);
-    else if (!home.field.fault()) home.field.setFault(home.rest ? `${home.rest.replace(/^\./, "")}: ${what}` : what);
+    else if (!home.field.fault()) home.field.setFault(home.rest ? `${placeWords(home.rest)}: ${what}` : what);
   }
   rest.textContent = homeless.join("\n");
   const first = [...fields.values()].find((one) => one.fault());

@@ -1,3 +1,4 @@
+import { copyNotice } from "./copy_notice.js";
 import { moved, removedAt, replacedAt, withRequirements } from "./design_edits.js";
 import { el, setText, textButton } from "./element.js";
 import { faultsOf } from "./request.js";
@@ -23,7 +24,7 @@ export function ledger(root, store) {
   const actions = rowActions(store, focusRow);
   const editor = requirementEditor(document.body, store);
   const add = textButton("+ add a requirement", () => editor.open(null), { class: "adds" });
-  root.replaceChildren(el("div", { class: "verdict-lines" }, count, rest), list, empty, add, spoken);
+  root.replaceChildren(copyNotice(store), el("div", { class: "verdict-lines" }, count, rest), list, empty, add, spoken);
 
   let rows = [];
   let drawn = null;

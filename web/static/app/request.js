@@ -14,14 +14,24 @@ const OUT_OF_REACH = "Loopwright's server does not answer; your work is kept in 
  * @param {Object<string, string>} [headers]
  * @returns {Promise<Answer>} never rejects
  */
-export async function ask(method, url, body, headers = {}) {
+export function ask(method, url, body, headers = {}) {
+  return askWithText(method, url, body === undefined ? undefined : JSON.stringify(body), headers);
+}
+
+/**
+ * The same with JSON that is text already; the server says where it cannot be read.
+ *
+ * @param {string} method @param {string} url @param {string} [body] @param {Object<string, string>} [headers]
+ * @returns {Promise<Answer>} never rejects
+ */
+export async function askWithText(method, url, body, headers = {}) {
   let response;
   let text;
   try {
     response = await fetch(url, {
       method,
       headers: body === undefined ? headers : { "Content-Type": "application/json", ...headers },
-      body: body === undefined ? undefined : JSON.stringify(body),
+      body,
     });
     text = await response.text();
   } catch {
