@@ -106,9 +106,7 @@ def test_roots_of_minus_one(n: int) -> None:
 
 def test_on_the_axis_is_decided_exactly() -> None:
     # By hand: (s² + 900)(s² + 2)²(s + 3)(s² + s + 1)(s − 5)(s + 5).
-    got = roots_of(
-        multiplied([1, 0, 900], [1, 0, 2], [1, 0, 2], [1, 3], [1, 1, 1], [1, -5], [1, 5])
-    ).tolist()
+    got = roots_of(multiplied([1, 0, 900], [1, 0, 2], [1, 0, 2], [1, 3], [1, 1, 1], [1, -5], [1, 5])).tolist()
     assert [r for r in got if r.real == 0] == [
         *[1j * math.sqrt(2), -1j * math.sqrt(2)] * 2,
         30j,
@@ -137,7 +135,7 @@ def test_damping_keeps_its_digits() -> None:
 
 def test_spread_over_twelve_decades() -> None:
     # Exact by construction: corners 1e-6 … 1e6 rad/s, each twice.
-    corners = [-Fraction(10) ** k for k in range(-6, 7) for _ in range(2)]
+    corners = [-(Fraction(10) ** k) for k in range(-6, 7) for _ in range(2)]
     want = [float(c) for c in sorted(corners, reverse=True)]
     assert roots_of(expanded(corners)).tolist() == want
 
@@ -181,7 +179,7 @@ def test_against_60_digits(seed: int) -> None:
     assert_same_roots(got, want, rtol=2 * ULP)
 
 
-rationals = st.builds(Fraction, st.integers(-10**6, 10**6), st.integers(1, 10**3))
+rationals = st.builds(Fraction, st.integers(-(10**6), 10**6), st.integers(1, 10**3))
 
 
 @settings(deadline=None)
