@@ -32,7 +32,6 @@ def _root_as_written(value: Any) -> Any:
 Root: TypeAlias = Annotated[
     Number | tuple[Number, Number],
     BeforeValidator(_root_as_written),
-    Field(union_mode="left_to_right"),
     WithJsonSchema(
         {
             "anyOf": [

@@ -159,9 +159,11 @@ def _meaning(design: Design) -> list[Fault]:
     limits = design.actuator
     if limits.low is not None and limits.high is not None and limits.low >= limits.high:
         faults.append(Fault("actuator.high", f"must be greater than low, {limits.low:g}, is {limits.high:g}"))
-    for shape in ("command", "load"):
-        if getattr(design.scenario, shape).amplitude == 0:
-            faults.append(Fault(f"scenario.{shape}.amplitude", "must not be 0"))
+    faults += [
+        Fault(f"scenario.{shape}.amplitude", "must not be 0")
+        for shape in ("command", "load")
+        if getattr(design.scenario, shape).amplitude == 0
+    ]
     for index, row in enumerate(design.requirements):
         faults += _requirement_faults(row, f"requirements[{index}]", names)
     return faults
@@ -211,6 +213,8 @@ def _faults_of(error: ValidationError, data: Any, most: int) -> list[Fault]:
     seen: set[str] = set()
     details = error.errors(include_url=False)
     for detail in details:
+        if detail["loc"] and detail["loc"][-1] == "float" and isinstance(detail["input"], (list, tuple)):
+            continue  # the other half of "a number or [re, im]" says it better
         where = _path(detail["loc"], data, detail["type"])
         if where not in seen and len(faults) < most:
             seen.add(where)
