@@ -2,7 +2,7 @@ import { caseRenamed, freeName, moved, removedAt, withCases } from "./design_edi
 import { caseEditor } from "./cases_editor.js";
 import { el, setText, textButton } from "./element.js";
 import { modelText } from "./model_text.js";
-import { measureFacts, readingText } from "./requirement_words.js";
+import { measureFacts, readingText, unitOf } from "./requirement_words.js";
 
 /** The readings that tell cases apart at a glance. */
 const KEY_READINGS = ["crossover_rad_s", "phase_margin_deg", "gain_margin_db", "peak_sensitivity", "overshoot_pct"];
@@ -78,7 +78,7 @@ function caseRow(store, one, index, count, { edit, names }) {
       stability.classList.toggle("is-short", assessed?.stable === false);
       for (const { measure, node: cell } of readings) {
         const reading = assessed?.readings[measure];
-        setText(cell, assessed ? readingText(reading, measureFacts(store.measures, measure).unit, store.ui.unit) : "…");
+        setText(cell, assessed ? readingText(reading, unitOf(store, measure), store.ui.unit) : "…");
         cell.title = reading?.why ?? "";
       }
     },

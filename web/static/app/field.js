@@ -21,7 +21,7 @@ export function field(label, control, { hint = "", class: extra = "", group = fa
   control.setAttribute("aria-describedby", described);
   const name = el(group ? "span" : "label", { class: "label-text", text: label, id: `${id}-name`, for: group ? null : id });
   if (group) control.setAttribute("aria-labelledby", name.id);
-  const node = el("div", { class: `labelled ${extra}`.trim() }, name, control, hintNode, fault);
+  const node = el("div", { class: `labelled ${extra}`.trim() }, name, control, fault, hintNode);
   return {
     node,
     control,

@@ -28,7 +28,7 @@ export function openFile(root, store) {
       event.target.dispatchEvent(new CustomEvent("call-up", { bubbles: true, detail: { dialog: "demos" } }));
     })),
     el("label", { class: "label-text", text: "or paste it here" }), pasted,
-    el("button", { type: "button", class: "outlined", text: "open what was pasted", on: { click: () => takeText(pasted.value, "what was pasted") } }),
+    el("button", { type: "button", class: "outlined", text: "open what was pasted", on: { click: () => takeText(pasted.value, "The pasted text") } }),
     faults,
   );
 
@@ -70,7 +70,7 @@ export function openFile(root, store) {
     const text = event.clipboardData?.getData("text/plain") ?? "";
     if (!text.includes("loopwright-design/")) return;
     event.preventDefault();
-    takeText(text, "what was pasted");
+    takeText(text, "The pasted text");
   });
   document.addEventListener("keydown", (event) => {
     if (!(event.ctrlKey || event.metaKey) || event.altKey || event.shiftKey) return;

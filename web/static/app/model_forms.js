@@ -62,6 +62,7 @@ function expressionDraft() {
     hint: "numbers, s, + − * / ^, parentheses, exp(-θ*s) as a factor",
   }]);
   control.after(caret);
+  draft.fill = (parsed) => { control.value = formulaOf(parsed); };
   // Leading blanks are not sent: the columns that come back count from the first character that was.
   draft.point = (errors) => {
     const column = Number(COLUMN.exec(errors?.find(({ where }) => where.endsWith("text"))?.what ?? "")?.[1]);
@@ -73,6 +74,17 @@ function expressionDraft() {
     caret.textContent = `${from > 0 ? "…" : ""}${shown}\n${" ".repeat(column - 1 - from + (from > 0 ? 1 : 0))}↑`;
   };
   return draft;
+}
+
+/** A formula with every digit, so that going over to it changes nothing. */
+function formulaOf({ gain, zeros, poles }) {
+  const plain = (value) => (value < 0 ? `- ${-value}` : `+ ${value}`);
+  const product = (roots) => roots.filter(([, im]) => im >= 0).map(([re, im]) => {
+    const factor = re === 0 ? "s" : `(s ${plain(-re)})`;
+    return im === 0 ? factor : `(${factor}^2 + ${im}^2)`;
+  }).join("*");
+  const [top, bottom] = [product(zeros), product(poles)];
+  return `${gain}${top ? `*${top}` : ""}${bottom ? `/(${bottom})` : ""}`;
 }
 
 function factoredDraft() {

@@ -1,6 +1,6 @@
 import { el, setText } from "./element.js";
 import { number, signed } from "./format.js";
-import { measureFacts, readingText, whereRead } from "./requirement_words.js";
+import { measureFacts, readingText, unitOf, whereRead } from "./requirement_words.js";
 import { rootWords } from "./typed_list.js";
 import { sentence } from "./requirement_row.js";
 import { toShown } from "./units.js";
@@ -70,7 +70,7 @@ function readingRows(store, cases, pinned) {
   let group = null;
   return measures.flatMap((measure) => {
     const facts = measureFacts(store.measures, measure);
-    const unit = unitOf(store, measure, facts);
+    const unit = unitOf(store, measure);
     const cells = cases.flatMap((one, index) => [
       cell(one.now.readings[measure], unit, shown, `${measure}-${index}`, one.now.name, facts.label),
       pinned ? cell(one.pinned?.readings[measure], unit, shown, `${measure}-${index}-was`, `${one.now.name}, pinned`, facts.label, "was") : null,
@@ -83,15 +83,6 @@ function readingRows(store, cases, pinned) {
 }
 
 const groupRow = (name, columns) => el("tr", { class: "group-row" }, el("th", { scope: "colgroup", colspan: columns, text: name }));
-
-/** Effort and load peaks carry the units of the design's signals. */
-function unitOf(store, measure, facts) {
-  const row = store.lastGood.assessment.requirements.find((one) => one.measure === measure);
-  if (row) return row.unit;
-  if (measure === "peak_effort") return store.design.signals?.effort?.unit ?? "";
-  if (measure === "load_peak") return store.design.signals?.output?.unit ?? "";
-  return facts.unit;
-}
 
 function cell(reading, unit, shown, key, caseName, label, extra = "") {
   const text = readingText(reading, unit, shown);

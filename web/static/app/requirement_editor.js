@@ -5,7 +5,7 @@ import { exact } from "./format.js";
 import { measurePicker } from "./measure_picker.js";
 import { ask, faultsOf } from "./request.js";
 import { requirementPlaces } from "./requirement_places.js";
-import { measureFacts } from "./requirement_words.js";
+import { measureFacts, unitOf } from "./requirement_words.js";
 import { sheet } from "./sheet.js";
 import { numberFault, typedNumberOrNone } from "./typed_number.js";
 import { fromShown, shownUnit, toShown } from "./units.js";
@@ -24,7 +24,7 @@ export function requirementEditor(root, store) {
   const places = requirementPlaces(store, drawForMeasure);
   const atLeast = textInput("", { inputmode: "decimal" });
   const atMost = textInput("", { inputmode: "decimal" });
-  const rank = choice([["must", "must: the design is not met without it"], ["should", "should: judged and shown, wanted"]], "must");
+  const rank = choice([["must", "must"], ["should", "should"]], "must");
   const cases = el("div", { class: "checks", role: "group" });
   const reason = el("textarea", { class: "field", rows: "2" });
   const rest = el("p", { class: "fault", role: "alert" });
@@ -33,7 +33,7 @@ export function requirementEditor(root, store) {
     ["at_least", field("at least", atLeast)],
     ["at_most", field("at most", atMost)],
     ["cases", field("judged on", cases, { group: true })],
-    ["rank", field("rank", rank)],
+    ["rank", field("rank", rank, { hint: "both are judged; the rank tells the reader which may give way first" })],
     ["reason", field("reason", reason, { hint: "why the limit is what it is: a standard, a measurement, a promise" })],
   ]);
   fields.get("measure").node.querySelector("label").after(picker.node, what);
@@ -62,7 +62,7 @@ export function requirementEditor(root, store) {
     places.node.hidden = !frequency;
     limits.hidden = !facts || (frequency && places.isMask());
     what.textContent = facts?.what ?? "";
-    const unit = facts ? shownUnit(facts.unit, store.ui.unit) : "";
+    const unit = facts ? shownUnit(unitOf(store, facts.measure), store.ui.unit) : "";
     for (const [side, word] of [["at_least", "at least"], ["at_most", "at most"]]) {
       fields.get(side).node.querySelector("label").textContent = unit && unit !== "1" ? `${word}, ${unit}` : word;
     }

@@ -1,7 +1,7 @@
 import { el, freshId, setText, textButton } from "./element.js";
 import { exact } from "./format.js";
 import { exactNumber } from "./exact_number.js";
-import { limitText, measureFacts, measureText, readingText, standing, whereRead } from "./requirement_words.js";
+import { limitText, measureFacts, measureText, readingText, standing, unitOf, whereRead } from "./requirement_words.js";
 import { slackBar } from "./slack_bar.js";
 import { typedNumber } from "./typed_number.js";
 import { fromShown, toShown } from "./units.js";
@@ -32,7 +32,8 @@ export function requirementRow(store, index, requirement, actions) {
   const was = el("span", { class: "requirement-was" });
   const caseName = el("span", { class: "requirement-case" });
   const bar = slackBar();
-  const more = el("div", { class: "requirement-more", id: moreId, hidden: true });
+  const told = el("div");
+  const more = el("div", { class: "requirement-more", id: moreId, hidden: true }, told, rowButtons(store, requirement, index, actions));
   const node = el("li", { class: "requirement", data: { row: index } },
     el("div", { class: "requirement-line" }, measure, limits.node),
     el("div", { class: "requirement-line" }, el("span", { class: "requirement-values" }, worst, was), caseName),
@@ -57,7 +58,7 @@ export function requirementRow(store, index, requirement, actions) {
     last = { verdict, pinned };
     const { unit } = store.ui;
     const state = standing(verdict);
-    const ruleUnit = verdict?.unit ?? facts().unit;
+    const ruleUnit = unitOf(store, requirement.measure);
     const rank = requirement.rank === "should" ? ", should" : "";
     setText(measure, measureText(requirement, facts().label, unit) + rank);
     limits.update();
@@ -67,7 +68,7 @@ export function requirementRow(store, index, requirement, actions) {
     setText(caseName, verdict?.case ?? "");
     node.dataset.standing = state;
     bar.update({ standing: state, slack: verdict?.slack, pinned: pinned?.slack });
-    if (!more.hidden) fillMore(more, store, requirement, verdict, ruleUnit, index, actions);
+    if (!more.hidden) drawFacts(told, store, requirement, verdict, ruleUnit);
   }
 
   return { node, update, openLimit: limits.open };
@@ -80,10 +81,11 @@ function limitNumbers(store, index, requirement, facts, actions) {
   }
   const inRadians = () => facts().unit === "rad/s";
   const numbers = [["at_least", "≥"], ["at_most", "≤"]].filter(([side]) => requirement[side] !== undefined && requirement[side] !== null)
-    .map(([side, sign]) => {
+    .map(([side, sign], place, all) => {
+      const last = place === all.length - 1; // with a limit on either side, one unit is enough
       const number = exactNumber({
         name: `${facts().label}, ${side === "at_least" ? "at least" : "at most"}`,
-        show: (value) => `${sign} ${limitText(value, facts().unit, store.ui.unit)}`,
+        show: (value) => `${sign} ${limitText(value, unitOf(store, requirement.measure), store.ui.unit, last)}`,
         typed: (value) => exact(inRadians() ? toShown(value, store.ui.unit) : value),
         read: (text) => (inRadians() ? fromShown(typedNumber(text), store.ui.unit) : typedNumber(text)),
         keep: (value) => actions.keepLimit(index, side, value),
@@ -96,8 +98,8 @@ function limitNumbers(store, index, requirement, facts, actions) {
   };
 }
 
-/** Why the row is there, where it is read, how every case stands, and what can be done with it. */
-function fillMore(more, store, requirement, verdict, unit, index, actions) {
+/** Why the row is there, where it is read, and how every case stands. */
+function drawFacts(told, store, requirement, verdict, unit) {
   const shown = store.ui.unit;
   const at = whereRead(verdict?.reading, shown);
   const lines = [
@@ -108,16 +110,18 @@ function fillMore(more, store, requirement, verdict, unit, index, actions) {
     requirement.cases ? el("p", { text: `Judged on ${requirement.cases.join(", ")} only.` }) : null,
     everyCase(store, requirement, unit, shown),
   ];
+  told.replaceChildren(...lines.filter(Boolean));
+}
+
+function rowButtons(store, requirement, index, actions) {
   const name = measureFacts(store.measures, requirement.measure).label;
   const count = store.design.requirements.length;
-  const focused = more.contains(document.activeElement) ? document.activeElement.dataset.act : null;
   const act = (word, run, key, disabled = false) => textButton(word, run, { "aria-label": `${word} ${name}`, data: { act: key }, disabled });
-  more.replaceChildren(...lines.filter(Boolean), el("div", { class: "requirement-actions" },
+  return el("div", { class: "requirement-actions" },
     act("edit", () => actions.edit(index), "edit"),
     act("move up", () => actions.move(index, index - 1), "up", index === 0),
     act("move down", () => actions.move(index, index + 1), "down", index === count - 1),
-    act("remove", () => actions.remove(index), "remove")));
-  if (focused) more.querySelector(`[data-act="${focused}"]`)?.focus();
+    act("remove", () => actions.remove(index), "remove"));
 }
 
 function everyCase(store, requirement, unit, shown) {

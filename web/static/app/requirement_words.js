@@ -1,5 +1,5 @@
 import { joinUnit, number, withUnit } from "./format.js";
-import { shownUnit, toShown } from "./units.js";
+import { shownUnit, toShown, valueInUnit } from "./units.js";
 
 /** How requirements and readings are put into words. */
 
@@ -35,22 +35,38 @@ export function whereRead(reading, shown) {
 /** The measure with what it is taken at: "loop gain at 0.50 rad/s". */
 export function measureText(requirement, label, shown) {
   const name = label || requirement.measure;
-  const at = (value) => number(toShown(value, shown));
+  const at = (value) => trimmed(toShown(value, shown));
   if (typeof requirement.at_rad_s === "number") return `${name} at ${at(requirement.at_rad_s)} ${shown}`;
   if (requirement.over_rad_s) return `${name} from ${at(requirement.over_rad_s[0])} to ${at(requirement.over_rad_s[1])} ${shown}`;
   if (requirement.mask) return `${name} against a mask`;
   return name;
 }
 
-/** A limit with its unit: "45°", "8 dB". */
-export function limitText(value, unit, shown) {
-  const inUnit = unit === "rad/s" ? toShown(value, shown) : value;
-  return joinUnit(number(inUnit, 4).replace(/(\.\d*?)0+$/, "$1").replace(/\.$/, ""), shownUnit(unit, shown));
+/** A limit with its unit, "45°" or "8 dB"; the unit can be left to the other limit beside it. */
+export function limitText(value, unit, shown, withUnit = true) {
+  return joinUnit(trimmed(valueInUnit(value, unit, shown)), withUnit ? shownUnit(unit, shown) : "");
+}
+
+/** Limits are round numbers that someone chose: no zeros are added to them. */
+function trimmed(value) {
+  const text = number(value, 4);
+  return text.includes(".") && !text.includes("·") ? text.replace(/\.?0+$/, "") : text;
 }
 
 /** @param {any[]} measures the catalogue @param {string} measure */
 export function measureFacts(measures, measure) {
   return measures.find((one) => one.measure === measure) ?? { measure, label: measure.replaceAll("_", " "), unit: "", what: "", needs: [] };
+}
+
+/**
+ * The unit of a measure in this design: effort and load peaks carry those of the signals.
+ *
+ * @param {import("./store.js").Store} store @param {string} measure
+ */
+export function unitOf(store, measure) {
+  if (measure === "peak_effort") return store.design?.signals?.effort?.unit ?? "";
+  if (measure === "load_peak") return store.design?.signals?.output?.unit ?? "";
+  return measureFacts(store.measures, measure).unit;
 }
 
 /** One word for how a row stands, for styles and for screen readers. */

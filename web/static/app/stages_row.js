@@ -40,6 +40,7 @@ export function stageRow(store, index, stage, actions, rows) {
   const nameSlot = el("span", { class: "stage-name" }, stage.name ? `${stage.name}, ` : "");
   const grip = el("button", { type: "button", class: "grip", "aria-label": `move ${called}: drag, or arrow keys up and down`, title: "drag to another place" });
   const act = (word, run, key, more = {}) => textButton(word, run, { "aria-label": `${word} ${called}`, data: { act: key }, ...more });
+  const seldom = (word, run, key) => act(word, run, key, { class: "seldom" });
   const count = store.design.compensator.stages.length;
   const row = el("li", { class: `stage-row${awake ? "" : " is-resting"}`, data: { stage: index } },
     grip,
@@ -48,9 +49,9 @@ export function stageRow(store, index, stage, actions, rows) {
       textButton("↑", () => actions.move(index, index - 1), { "aria-label": `move ${called} up`, disabled: index === 0, class: "arrow", data: { act: "up" } }),
       textButton("↓", () => actions.move(index, index + 1), { "aria-label": `move ${called} down`, disabled: index === count - 1, class: "arrow", data: { act: "down" } }),
       act(awake ? "rest" : "wake", () => actions.toggle(index), "toggle"),
-      act("rename", () => renameIn(nameSlot, stage, (name) => actions.rename(index, name)), "rename"),
-      act("copy", () => actions.copy(index), "copy"),
-      act("all numbers", () => actions.exactNumbers(index), "numbers"),
+      seldom("rename", () => renameIn(nameSlot, stage, (name) => actions.rename(index, name)), "rename"),
+      seldom("copy", () => actions.copy(index), "copy"),
+      seldom("all numbers", () => actions.exactNumbers(index), "numbers"),
       act("remove", () => actions.remove(index), "remove")));
   draggableRow(grip, { row, rows, move: actions.move });
   row.addEventListener("pointerenter", () => actions.focus(index));
