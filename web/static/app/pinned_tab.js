@@ -21,7 +21,7 @@ export function pinnedTab(root, store) {
   const body = el("tbody");
   const table = el("table", { class: "quiet-table readings-table" }, el("caption", { class: "visually-hidden", text: "all readings of all plant cases" }), head, body);
   const why = el("p", { class: "reading-why", role: "status" });
-  root.append(lead, el("div", { class: "table-scroll", tabindex: "0", role: "region", "aria-label": "all readings" }, table), why);
+  root.append(lead, el("div", { class: "table-scroll readings-scroll", tabindex: "0", role: "region", "aria-label": "all readings" }, table), why);
   let timer = 0;
   let last = 0;
 

@@ -24,8 +24,7 @@ const GROUPS = [
     text("signals.effort.name", "name of the effort"), text("signals.effort.unit", "unit of the effort"),
     amount("actuator.low", "lowest effort"), amount("actuator.high", "highest effort"), amount("actuator.rate", "fastest change, per second"),
   ]],
-  ["design", [
-    text("title", "title"),
+  ["plots and notes", [
     amount("scenario.horizon_s", "responses shown for, s", { hint: "left empty: until they have settled" }),
     { path: "notes", label: "notes", kind: "area" },
   ]],
@@ -73,7 +72,7 @@ function entryOf(store, part) {
     const change = (design) => withPath(design, steps, value);
     const faults = await faultsOf(change(store.design));
     one.setFault(faults[0]?.what ?? null);
-    if (faults.length === 0) store.edit(part.path === "notes" || part.path === "title" ? part.path : `${part.label}`, change);
+    if (faults.length === 0) store.edit(part.label, change);
     return undefined;
   }
 
