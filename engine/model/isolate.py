@@ -25,6 +25,8 @@ ExactComplex: TypeAlias = tuple[Fraction, Fraction]
 PRECISIONS_BITS = (160, 320, 640, 1280)
 ACCURACY_BITS = 80
 SWEEPS = 60
+MOST_EFFORT = 600_000
+"""Bound on the fixed-point steps, counted as degree · precision; the hardest input takes about a second."""
 
 
 def separated_roots(polynomial: IntPolynomial) -> list[ExactComplex]:
@@ -49,7 +51,11 @@ def separated_roots(polynomial: IntPolynomial) -> list[ExactComplex]:
             decided = work.decide(radii)
             if decided is not None:
                 return decided
-    raise DesignError("", "has roots too close together to be told apart; give the model as zeros and poles")
+    raise _too_close()
+
+
+def _too_close() -> DesignError:
+    return DesignError("", "has roots too close together to be told apart; give the model as zeros and poles")
 
 
 # First phase: doubles
@@ -137,6 +143,7 @@ class _FixedPoint:
     y: list[int]
     scale: int
     bits: int
+    effort: int = 0
 
     @classmethod
     def around(cls, z: ComplexArray, bits: int) -> _FixedPoint:
@@ -159,6 +166,9 @@ class _FixedPoint:
         evaluator = _Evaluator(polynomial, self.bits + count + 16)
         waiting = set(range(count))
         for _ in range(SWEEPS):
+            self.effort += len(waiting) * count * (1 + self.bits // 300)
+            if self.effort > MOST_EFFORT:
+                raise _too_close()
             for i in sorted(waiting):
                 if self._improve(i, evaluator):
                     waiting.discard(i)

@@ -215,6 +215,12 @@ def test_work_is_bounded() -> None:
     refused(lambda: from_expression(text), "text", "column")
 
 
+def test_roots_that_would_take_too_long_are_said() -> None:
+    # Sixty poles 1e-45 apart: the zeros between them cannot be told apart at the precision that is spent.
+    text = "+".join(f"1/(s+0.{'123456789' * 5}{k})" for k in range(10, 70))
+    refused(lambda: from_expression(text), "text", "too close together", "zeros and poles")
+
+
 def _random_formula(rng: random.Random, depth: int) -> tuple[str, str]:
     """The same rational function as text in our grammar and in Python's."""
     kind = rng.choice(["number", "s", "s"] if depth == 0 else ["+", "-", "*", "/", "^", "()", "neg", "number"])
