@@ -20,7 +20,7 @@ const CONSTANTS = [
 export function gainRow(store) {
   const gain = exactNumber({
     name: "gain of the compensator",
-    show: (value) => number(value, 4),
+    show: (value) => number(value),
     async keep(value) {
       const faults = await faultsOf(withGain(store.design, value));
       if (faults.length > 0) return faults[0].what;

@@ -46,12 +46,12 @@ export function stageRow(store, index, stage, actions, rows) {
     grip,
     el("span", { class: "stage-sentence" }, nameSlot, ...parts.map((part) => part.node), awake ? "" : ", resting"),
     el("span", { class: "stage-actions" },
-      textButton("↑", () => actions.move(index, index - 1), { "aria-label": `move ${called} up`, disabled: index === 0, class: "arrow", data: { act: "up" } }),
-      textButton("↓", () => actions.move(index, index + 1), { "aria-label": `move ${called} down`, disabled: index === count - 1, class: "arrow", data: { act: "down" } }),
-      act(awake ? "rest" : "wake", () => actions.toggle(index), "toggle"),
       seldom("rename", () => renameIn(nameSlot, stage, (name) => actions.rename(index, name)), "rename"),
       seldom("copy", () => actions.copy(index), "copy"),
       seldom("all numbers", () => actions.exactNumbers(index), "numbers"),
+      textButton("↑", () => actions.move(index, index - 1), { "aria-label": `move ${called} up`, disabled: index === 0, class: "arrow", data: { act: "up" } }),
+      textButton("↓", () => actions.move(index, index + 1), { "aria-label": `move ${called} down`, disabled: index === count - 1, class: "arrow", data: { act: "down" } }),
+      act(awake ? "rest" : "wake", () => actions.toggle(index), "toggle"),
       act("remove", () => actions.remove(index), "remove")));
   draggableRow(grip, { row, rows, move: actions.move });
   row.addEventListener("pointerenter", () => actions.focus(index));
