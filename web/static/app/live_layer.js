@@ -1,0 +1,114 @@
+/**
+ * The moving curves: a canvas over the plot areas, drawn with the same arithmetic as the axes. Plotly needs
+ * some 60 ms for a redraw; this takes two or three, so it can follow a hand.
+ */
+
+import { looks } from "./look.js";
+import { linearScale } from "./scales.js";
+
+/** @typedef {import("./loop_picture.js").Picture} Picture */
+/** @typedef {import("./loop_picture.js").Plot} Plot */
+/** @typedef {import("./loop_picture.js").Curve} Curve */
+
+/** @param {HTMLCanvasElement} canvas */
+export function liveLayer(canvas) {
+  const pen = /** @type {CanvasRenderingContext2D} */ (canvas.getContext("2d"));
+  let look = /** @type {Record<string, import("./look.js").Look> | null} */ (null);
+  return {
+    /** Colours may have changed. */
+    forgetLook() { look = null; },
+    clear() { canvas.hidden = true; },
+    /** @param {Picture} picture */
+    draw(picture) {
+      look ??= looks();
+      canvas.hidden = false;
+      fitCanvas(canvas, pen, picture.width, picture.height);
+      for (const plot of picture.plots) drawPlot(pen, picture, plot, look);
+    },
+  };
+}
+
+function fitCanvas(/** @type {HTMLCanvasElement} */ canvas, /** @type {CanvasRenderingContext2D} */ pen,
+  /** @type {number} */ width, /** @type {number} */ height) {
+  const dense = window.devicePixelRatio || 1;
+  const [wide, high] = [Math.round(width * dense), Math.round(height * dense)];
+  if (canvas.width !== wide || canvas.height !== high) {
+    canvas.width = wide;
+    canvas.height = high;
+    canvas.style.width = `${width}px`;
+    canvas.style.height = `${height}px`;
+  }
+  pen.setTransform(dense, 0, 0, dense, 0, 0);
+  pen.clearRect(0, 0, width, height);
+}
+
+function drawPlot(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Picture} */ { left, right, logarithmic },
+  /** @type {Plot} */ plot, /** @type {Record<string, import("./look.js").Look>} */ look) {
+  const y = linearScale(plot.y, plot.bottom, plot.top);
+  pen.save();
+  pen.beginPath();
+  pen.rect(left, plot.top, right - left, plot.bottom - plot.top);
+  pen.clip();
+  pen.lineJoin = "round";
+  for (const curve of plot.curves) {
+    const { color, width, dash } = look[curve.kind];
+    const xs = pixels(curve.xs, plot.x, left, right, logarithmic);
+    pen.beginPath();
+    if (curve.low && curve.high) {
+      outline(pen, xs, curve.low, curve.high, y);
+      pen.fillStyle = color;
+      pen.fill();
+    } else {
+      trace(pen, xs, /** @type {ArrayLike<number>} */ (curve.ys), y, false);
+      pen.strokeStyle = color;
+      pen.lineWidth = width;
+      pen.setLineDash(dash);
+      pen.stroke();
+    }
+  }
+  pen.restore();
+}
+
+// Values far outside would make the rasteriser work for nothing, and infinities break a path.
+const FAR_PX = 4000;
+
+function trace(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Float64Array} */ xs, /** @type {ArrayLike<number>} */ ys,
+  /** @type {import("./scales.js").Scale} */ y, /** @type {boolean} */ joined) {
+  let down = joined;
+  for (let at = 0; at < xs.length; at += 1) {
+    const value = ys[at];
+    if (value !== value) {
+      down = joined;
+      continue;
+    }
+    const py = Math.max(-FAR_PX, Math.min(FAR_PX, y.start + (value - y.from) * y.perUnit));
+    if (down) pen.lineTo(xs[at], py);
+    else pen.moveTo(xs[at], py);
+    down = true;
+  }
+}
+
+function outline(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Float64Array} */ xs, /** @type {Float32Array} */ low,
+  /** @type {Float32Array} */ high, /** @type {import("./scales.js").Scale} */ y) {
+  trace(pen, xs, high, y, false);
+  for (let at = xs.length - 1; at >= 0; at -= 1) {
+    if (low[at] === low[at]) pen.lineTo(xs[at], Math.max(-FAR_PX, Math.min(FAR_PX, y.start + (low[at] - y.from) * y.perUnit)));
+  }
+  pen.closePath();
+}
+
+let known = /** @type {{xs: ArrayLike<number> | null, key: string, px: Float64Array}} */ ({ xs: null, key: "", px: new Float64Array(0) });
+
+// All curves of a plot, and both loop plots, share one array of frequencies: convert it once.
+function pixels(/** @type {ArrayLike<number>} */ xs, /** @type {[number, number]} */ range, /** @type {number} */ left,
+  /** @type {number} */ right, /** @type {boolean} */ logarithmic) {
+  const key = `${range[0]}|${range[1]}|${left}|${right}|${logarithmic}`;
+  if (known.xs === xs && known.key === key) return known.px;
+  const px = new Float64Array(xs.length);
+  const perUnit = (right - left) / (range[1] - range[0]);
+  for (let at = 0; at < px.length; at += 1) {
+    px[at] = left + ((logarithmic ? Math.log10(xs[at]) : xs[at]) - range[0]) * perUnit;
+  }
+  known = { xs, key, px };
+  return px;
+}
