@@ -1,0 +1,146 @@
+"""How far a search for crossings must go, read from the loop's series at ω → 0 and ω → ∞.
+
+Beyond the largest root, ln L(s) = ln g − r·ln s − Σ A_k / (k·s^k) with the power sums A_k = Σ ±root^k; even k
+move the gain, odd k the phase. The first sum that is not zero rules once ω is far enough out, and how far that
+is follows from the geometric remainder. The same holds below the smallest root with the inverse roots.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from engine.loop.sections import BoolArray, Sections
+from engine.model.factored import ComplexArray, FloatArray
+
+# A power sum smaller than this, relative to the number of roots, is taken for zero: it is rounding.
+_NOTHING = 1e-12
+_HIGHEST_SUM = 8
+
+
+@dataclass(frozen=True, eq=False)
+class Reach:
+    """Per case (c,): outside [low, high] no crossing of the kind can lie [rad/s]."""
+
+    gain_low: FloatArray
+    gain_high: FloatArray
+    phase_low: FloatArray
+    phase_high: FloatArray
+    """With dead time: where the gain has become monotone; the phase goes on crossing."""
+    smallest: FloatArray
+    """Size of the smallest root other than 0; 1 where there is none."""
+    largest: FloatArray
+    relative_degree: FloatArray
+    log_high_gain: FloatArray
+    """ln|g|, L(s) → g·s^−relative_degree for s → ∞ (dead time left aside)."""
+    phase_zero: FloatArray
+    """Phase for ω → 0 [rad]."""
+    phase_infinite: FloatArray
+    """Phase for ω → ∞, dead time left aside [rad]."""
+
+
+def reach_of(model: Sections) -> Reach:
+    """Structural limits of a set of loops, last axis (c,)."""
+    active = model.root_weight != 0
+    size = np.abs(model.root)
+    count = np.sum(active, axis=0)
+    largest = np.max(np.where(active, size, 0.0), axis=0, initial=0.0)
+    smallest = np.min(np.where(active, size, math.inf), axis=0, initial=math.inf)
+    bare = count == 0
+    largest, smallest = np.where(bare, 1.0, largest), np.where(bare, 1.0, smallest)
+    with np.errstate(under="ignore"):
+        high_sums = _power_sums(model.root / largest, model.root_weight)
+        low_sums = _power_sums(smallest / model.root, model.root_weight)
+    lag = model.dead_time_s * smallest
+    low_sums[0] = low_sums[0] + lag
+
+    relative_degree = model.integrators - np.sum(model.root_weight, axis=0)
+    log_high_gain = model.log_gain - np.sum(model.root_weight * np.log(size), axis=0)
+    phase_zero = model.turn - model.integrators * (0.5 * math.pi)
+    phase_infinite = phase_zero + 0.5 * math.pi * (
+        np.sum(model.corner_weight * np.sign(model.corner), axis=0)
+        + 2.0 * np.sum(model.pair_weight * np.where(model.decay < 0, -1.0, 1.0), axis=0)
+    )
+    delayed = model.dead_time_s > 0
+
+    plain_high = _plain(count, 0.0 * lag)
+    plain_low = _plain(count, lag)
+    phase_high = largest / _first_rules(high_sums[0::2], count, _on_level(phase_infinite), plain_high)
+    gain_high = _gain_limit(log_high_gain, relative_degree, high_sums, count, delayed, plain_high)
+    gain_low = _gain_limit(model.log_gain, -model.integrators, low_sums, count, False & delayed, plain_low)
+    far = np.where(relative_degree != 0, np.exp(_bounded(log_high_gain / _nonzero(relative_degree))) * 2.0, 0.0)
+    near = np.where(
+        model.integrators != 0, np.exp(_bounded(model.log_gain / _nonzero(model.integrators))) / 2.0, math.inf
+    )
+    gain_high_at = np.maximum(largest / gain_high, far)
+    return Reach(
+        gain_low=np.minimum(smallest * gain_low, near),
+        gain_high=gain_high_at,
+        phase_low=smallest * _first_rules(low_sums[0::2], count + lag, _on_level(phase_zero), plain_low),
+        phase_high=np.where(delayed, gain_high_at, phase_high),
+        smallest=smallest,
+        largest=largest,
+        relative_degree=relative_degree,
+        log_high_gain=log_high_gain,
+        phase_zero=phase_zero,
+        phase_infinite=phase_infinite,
+    )
+
+
+def _power_sums(ratio: ComplexArray, weight: FloatArray) -> list[FloatArray]:
+    sums = []
+    power = ratio
+    for _ in range(_HIGHEST_SUM):
+        sums.append(np.sum(weight * power.real, axis=0))
+        power = power * ratio
+    return sums
+
+
+def _plain(count: FloatArray, lag: FloatArray) -> FloatArray:
+    """Distance q < 1 at which all roots together move the gain by under 1/4 and the phase by under 90°."""
+    full = np.maximum(count, 1.0) + lag
+    return np.minimum(0.5 / np.sqrt(np.maximum(count, 1.0)), 1.2 / full)
+
+
+def _first_rules(sums: list[FloatArray], count: FloatArray, needed: BoolArray, plain: FloatArray) -> FloatArray:
+    """Distance q within which the first sum that is not zero outweighs all later ones, where `needed`."""
+    q = plain
+    found = ~needed
+    full = np.maximum(count, 1.0)
+    for total in sums:
+        share = np.abs(total) / full
+        here = ~found & (share > _NOTHING)
+        q = np.where(here, np.minimum(plain, 0.9 * np.sqrt(share / (1.0 + share))), q)
+        found = found | here
+    return q
+
+
+def _gain_limit(
+    log_limit: FloatArray,
+    degree: FloatArray,
+    sums: list[FloatArray],
+    count: FloatArray,
+    monotone: BoolArray,
+    plain: FloatArray,
+) -> FloatArray:
+    """Distance q beyond which the gain crosses 1 no more, apart from the asymptote's own crossing."""
+    level = (degree == 0) & (np.abs(log_limit) <= 1e-13)
+    ruled = _first_rules(sums[1::2], count, (level | monotone) & (degree == 0), plain)
+    clear = np.sqrt(np.abs(log_limit) / np.maximum(count, 1.0))
+    return np.where((degree == 0) & ~level, np.minimum(ruled, np.maximum(clear, 1e-7)), ruled)
+
+
+def _on_level(phase: FloatArray) -> BoolArray:
+    quarter = np.rint(phase / (0.5 * math.pi))
+    level: BoolArray = np.mod(quarter, 4) == 2
+    return level
+
+
+def _bounded(exponent: FloatArray) -> FloatArray:
+    return np.clip(exponent, -300.0, 300.0)
+
+
+def _nonzero(degree: FloatArray) -> FloatArray:
+    return np.where(degree == 0, 1.0, degree)
