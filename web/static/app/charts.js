@@ -154,8 +154,9 @@ function drawFlag(/** @type {any} */ pennant, /** @type {Scene} */ scene, /** @t
     pennant.hide();
     return null;
   }
-  const { left, right, gain, railBottom } = scene.geometry;
-  const within = { x: left + 2, y: gain.top + 2, width: right - left - 4, height: railBottom - gain.top };
+  const { left, right, gain, phase, railBottom } = scene.geometry;
+  const [top, bottom] = grasp.at().y <= gain.bottom ? [gain.top, gain.bottom] : [phase.top, railBottom];
+  const within = { x: left + 2, y: top + 2, width: right - left - 4, height: bottom - top - 4 };
   const curve = boxesAlong((px) => scene.gain.px(scene.read("magnitude_db", scene.x.value(px))), scene.x.start, scene.x.end, 10);
   const content = { name: grasp.name(), value: grasp.text(), change: frozen || lit.how === "held" ? changeInWords(scene.store) : "", ...grasp.at() };
   return pennant.draw(content, within, [...obstacles, ...curve]);

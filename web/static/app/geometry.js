@@ -8,19 +8,20 @@
  *            figureHeight: number}} Geometry
  */
 
-const LEFT = 70;
+const LEFT = 92;
 const RIGHT = 24;
 const TOP = 34;
 const BETWEEN = 32;
 const ABOVE_RAIL = 14;
 const TICKS = 28;
 const LANE_GAP = 4;
-const LEAST_PLOTS = 300;
+const LEAST_PLOTS = 260;
 const GAIN_SHARE = 0.585;
 
 /** @param {number} width @param {number} height what the page offers @param {number} laneCount @returns {Geometry} */
 export function chartGeometry(width, height, laneCount) {
-  const pitch = laneCount > 5 ? 28 : laneCount > 3 ? 32 : 36;
+  const tight = height < 560;
+  const pitch = laneCount > 5 || (tight && laneCount > 3) ? 28 : laneCount > 3 || tight ? 32 : 36;
   const rail = laneCount * pitch;
   const plots = Math.max(LEAST_PLOTS, height - TOP - BETWEEN - ABOVE_RAIL - rail - TICKS);
   const gain = { top: TOP, bottom: Math.round(TOP + plots * GAIN_SHARE) };
@@ -50,5 +51,5 @@ export function responseGeometry(width, height) {
     top: Math.round(index * each + titled),
     bottom: Math.round((index + 1) * each - ticks),
   }));
-  return { width, height: Math.round(each * 3 + 4), left: 58, right: width - 22, plots };
+  return { width, height: Math.round(each * 3 + 4), left: 54, right: width - 18, plots };
 }

@@ -9,11 +9,10 @@ export function crossoverGrip(parent, scene, hand) {
   const place = { x: 0, y: 0 };
   const crossings = () => scene.frame.assessment.cases[0].gain_crossovers;
   const grasp = crossoverGrasp(scene, () => crossings()[0]?.rad_s ?? 1, () => place);
-  const { node, speak } = handle(hand, grasp, { class: "grip" },
+  const { node, speak } = handle(hand, grasp, { class: "crossover-grip" },
     svg("circle", { class: "glow", r: 14 }),
-    svg("circle", { class: "grip-disc", r: 9 }),
-    svg("path", { class: "grip-arrows", d: "M-13 -3.5L-17 0L-13 3.5M13 -3.5L17 0L13 3.5" }),
-    svg("path", { class: "grip-arrows", d: "M-3 -3.5V3.5M0 -3.5V3.5M3 -3.5V3.5" }));
+    svg("circle", { class: "grip-disc", r: 10 }),
+    svg("path", { class: "grip-arrows", d: "M-2.5 -3.5L-6 0L-2.5 3.5M2.5 -3.5L6 0L2.5 3.5" }));
   parent.append(node);
   return {
     draw() {

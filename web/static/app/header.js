@@ -56,7 +56,8 @@ function titleField(/** @type {import("./store.js").Store} */ store) {
       const text = store.design?.title ?? "";
       if (document.activeElement !== input) input.value = text;
       input.placeholder = "a title for this design";
-      input.style.width = `${Math.max(16, input.value.length + 2)}ch`;
+      // Where the browser cannot size a field by its content.
+      input.size = Math.max(12, input.value.length);
       document.title = text ? `${text} · Loopwright` : "Loopwright";
     },
   };

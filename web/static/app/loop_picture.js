@@ -3,7 +3,7 @@
 import { bandOf, curveOf } from "./envelope.js";
 import { markedRow } from "./marked.js";
 import { tick } from "./format.js";
-import { frequencyTicks, linearTicks } from "./scales.js";
+import { frequencyTicks } from "./scales.js";
 
 /**
  * @typedef {{kind: "band" | "nominal" | "worst" | "pinned" | "limit", xs: ArrayLike<number>,
@@ -48,9 +48,9 @@ export function curvesFor(store, name) {
 /** The first step that leaves the labels room. @returns {Tick[]} */
 function ticksEvery(/** @type {[number, number]} */ [low, high], /** @type {{top: number, bottom: number}} */ span,
   /** @type {number[]} */ steps) {
-  const room = (span.bottom - span.top) / 24;
+  const room = (span.bottom - span.top) / 20;
   const step = steps.find((one) => (high - low) / one <= room) ?? steps[steps.length - 1];
-  return linearTicks(low, high, (high - low) / step)
-    .filter((at) => Math.abs(at / step - Math.round(at / step)) < 1e-6)
+  const first = Math.ceil(low / step - 1e-9);
+  return Array.from({ length: Math.floor(high / step + 1e-9) - first + 1 }, (_, index) => (first + index) * step)
     .map((at) => ({ at, text: tick(at) }));
 }

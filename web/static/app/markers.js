@@ -18,6 +18,7 @@ const CHEVRON_PX = [16, 64];
 
 /** @param {SVGElement} parent @param {import("./scene.js").Scene} scene @param {import("./handle.js").Hand} hand */
 export function markers(parent, scene, hand) {
+  let knobs = /** @type {{x: number, y: number}[]} */ ([]);
   let places = /** @type {Map<string, {x: number, y: number}>} */ (new Map());
   const at = (/** @type {string} */ id) => places.get(id) ?? { x: 0, y: 0 };
 
@@ -42,13 +43,18 @@ export function markers(parent, scene, hand) {
       places = new Map(standing.map((place) => [place.id, place]));
       drawLeaders(standing.filter((place) => place.lifted));
       drawStems(corners.filter((corner) => corner.kind === "oo" || corner.kind === "xx"));
-      drawChevrons(corners.filter((corner) => corner.kind === "notch"));
+      knobs = [...drawChevrons(corners.filter((corner) => corner.kind === "notch")).values()].flatMap(({ now: { shape } }) => [
+        { x: shape.x - shape.arm, y: shape.top }, { x: shape.x + shape.arm, y: shape.top }, { x: shape.x, y: shape.point },
+      ]);
       drawCorners(corners);
     },
     /** What labels keep clear of. @returns {import("./labels.js").Box[]} */
-    boxes: () => [...places.values()].map(({ x, y }) => ({ x: x - 13, y: y - 13, width: 26, height: 26 })),
-    places: () => places,
+    boxes: () => [...[...places.values()].map(({ x, y }) => boxAbout(x, y, 13)), ...knobs.map(({ x, y }) => boxAbout(x, y, 6))],
   };
+}
+
+function boxAbout(/** @type {number} */ x, /** @type {number} */ y, /** @type {number} */ half) {
+  return { x: x - half, y: y - half, width: 2 * half, height: 2 * half };
 }
 
 function glow() {
@@ -112,7 +118,7 @@ function chevrons(/** @type {SVGElement} */ parent, /** @type {import("./scene.j
       const left = handle(hand, widthGrasp(scene, corner.stage, -1, () => ({ x: now.shape.x - now.shape.arm, y: now.shape.top })), { class: "arm", reach: 12 }, knob());
       const right = handle(hand, widthGrasp(scene, corner.stage, 1, () => ({ x: now.shape.x + now.shape.arm, y: now.shape.top })), { class: "arm", reach: 12 }, knob());
       const point = handle(hand, depthGrasp(scene, corner.stage, () => ({ x: now.shape.x, y: now.shape.point })),
-        { class: "point", orientation: "vertical", reach: 12 }, svg("path", { class: "stroke", d: "M-5 -3L0 3L5 -3" }));
+        { class: "point", orientation: "vertical", reach: 12 }, knob());
       return { node: svg("g", {}, line, left.node, right.node, point.node), line, left, right, point, now };
     },
     (part, corner) => {

@@ -193,7 +193,7 @@ function makeGainLane(/** @type {Scene} */ scene, /** @type {Hand} */ hand) {
     (item) => ({ node: svg("text", { class: "gain-tick", "text-anchor": "middle", text: item.text }) }),
     (part, item) => {
       set(part.node, { x: px(item.exponent), y: scene.geometry.lanes[0].middle + 4 });
-      show(part.node, Math.abs(px(item.exponent) - place.x) > 26);
+      show(part.node, Math.abs(px(item.exponent) - place.x) > 26 && px(item.exponent) < scene.x.end - 14 && px(item.exponent) > scene.x.start + 14);
     });
 
   return {

@@ -65,7 +65,7 @@ function layout(/** @type {Picture} */ picture) {
 }
 
 function plotlyLine(/** @type {import("./look.js").Look} */ { color, width, dash }) {
-  return { color, width, dash: dash.length ? dash.map((length) => `${length}px`).join(",") : "solid" };
+  return { color, width, simplify: false, dash: dash.length ? dash.map((length) => `${length}px`).join(",") : "solid" };
 }
 
 function axisName(/** @type {string} */ letter, /** @type {number} */ index) {

@@ -100,10 +100,10 @@ export function fittedGain(arrays, range) {
  *  @returns {[number, number]} */
 export function fittedPhase(arrays, range, lastCrossover_rad_s) {
   const omega = arrays.omega_rad_s.data;
-  const nominal = [curveOf(arrays.phase_deg, 0)];
-  const [low, high] = extent(omega, nominal, 10 ** range[0], 10 ** range[1]);
+  const { low: lows, high: highs } = bandOf(arrays.phase_deg, Array(arrays.phase_deg.shape[0]).fill(true));
+  const [low, high] = extent(omega, [lows, highs], 10 ** range[0], 10 ** range[1]);
   if (!Number.isFinite(low)) return [-270, -90];
-  const [needed] = extent(omega, nominal, 10 ** range[0], Math.min(10 ** range[1], 3 * lastCrossover_rad_s || Infinity));
+  const [needed] = extent(omega, [curveOf(arrays.phase_deg, 0)], 10 ** range[0], Math.min(10 ** range[1], 3 * lastCrossover_rad_s || Infinity));
   const top = Math.ceil((high + 8) / 30) * 30;
   const floor = Math.min(Number.isFinite(needed) ? needed - 60 : low, top - 330);
   const bottom = Math.floor((Math.max(low, floor) - 8) / 30) * 30;
