@@ -40,7 +40,7 @@ def _parallel(model: Factored, integrators: int, filter_s: float) -> dict[str, f
     """P, I, D from matching n2·s² + n1·s + n0 = P·s·(Tf·s+1) + I·(Tf·s+1) + D·s²  (an integrator-free C likewise)."""
     # Written over a denominator of unity DC, s^integrators·(Tf·s + 1).
     scale = model.gain * (filter_s if filter_s else 1.0)
-    rising = np.real(np.poly(model.zeros))[::-1] * scale
+    rising = np.atleast_1d(np.real(np.poly(model.zeros)))[::-1] * scale
     n0, n1, n2 = (float(rising[power]) if power < len(rising) else 0.0 for power in range(3))
     if integrators == 0:
         n0, n1, n2 = 0.0, n0, n1
