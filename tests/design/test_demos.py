@@ -165,8 +165,8 @@ def test_these_start_short_and_can_be_met(name: str) -> None:
 # --- the landing demo -------------------------------------------------------------------------------------------
 
 LANDING_STAGE, LANDING_HANDLE = 0, "zero_rad_s"
-LANDING_MET_RAD_S = (6.0, 8.4)
-"""The handle that meets the sheet, and where: 0.146 of a decade, all of it met."""
+LANDING_MET_RAD_S = (5.7, 8.3)
+"""The handle that meets the sheet, found by trying all of them, and where: 0.16 of a decade, met all along."""
 
 
 def moved(document: dict[str, Any], stage: int, handle: str, value: float) -> dict[str, Any]:
@@ -178,6 +178,7 @@ def moved(document: dict[str, Any], stage: int, handle: str, value: float) -> di
 def test_one_drag_meets_the_landing_demo() -> None:
     document = demo(LANDING)
     start = document["compensator"]["stages"][LANDING_STAGE][LANDING_HANDLE]
+    assert document["compensator"]["stages"][LANDING_STAGE]["kind"] == "lead_lag"
     low, high = LANDING_MET_RAD_S
     assert high < start < 1.15 * high
     assert math.log10(high / low) > 0.15
