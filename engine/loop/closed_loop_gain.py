@@ -28,6 +28,8 @@ class Quantity(IntEnum):
     """|P·S|"""
     LOOP = 5
     """|L|"""
+    PHASE = 6
+    """arg L, in place of a logarithm [rad]"""
 
 
 @dataclass(frozen=True, eq=False)
@@ -84,7 +86,7 @@ def closed_loop(log_gain: FloatArray, phase: FloatArray) -> ClosedLoop:
 def log_level(points: Points, omega_rad_s: FloatArray) -> FloatArray:
     """(p,) natural logarithm of each point's quantity."""
     gain, phase = gain_and_phase(points.loop, omega_rad_s)
-    return _level(points, omega_rad_s, closed_loop(gain, phase))
+    return _level(points, omega_rad_s, closed_loop(gain, phase), phase)
 
 
 def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
@@ -103,20 +105,23 @@ def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArra
         disk = np.where(large, 2.0, -2.0) * W / (plus * minus)
         disk_bend = -2.0 * W * (1.0 + W * W) / (plus * minus) ** 2
         kind = points.quantity
+        open_ = kind >= Quantity.LOOP
         rate = np.select(
-            [kind == Quantity.COMPLEMENTARY, kind == Quantity.DISK, kind == Quantity.LOOP], [S, disk, 1.0], -T
+            [kind == Quantity.COMPLEMENTARY, kind == Quantity.DISK, kind == Quantity.PHASE, open_],
+            [S, disk, -1j, 1.0],
+            -T,
         )
-        bend = np.select([kind == Quantity.DISK, kind == Quantity.LOOP], [disk_bend, 0.0], -product)
+        bend = np.select([kind == Quantity.DISK, open_], [disk_bend, 0.0], -product)
         slope = (rate * first).real
         curve = (bend * first * first + rate * second).real
     if points.has_side.any():
         side_first, side_second = slope_and_bend(points.side, omega_rad_s)
         slope = slope + points.has_side * side_first.real
         curve = curve + points.has_side * side_second.real
-    return _level(points, omega_rad_s, state), slope, curve
+    return _level(points, omega_rad_s, state, phase), slope, curve
 
 
-def _level(points: Points, omega_rad_s: FloatArray, state: ClosedLoop) -> FloatArray:
+def _level(points: Points, omega_rad_s: FloatArray, state: ClosedLoop, phase: FloatArray) -> FloatArray:
     kind = points.quantity
     with np.errstate(divide="ignore"):
         log_plus = np.log(np.abs(state.one_plus))
@@ -129,7 +134,8 @@ def _level(points: Points, omega_rad_s: FloatArray, state: ClosedLoop) -> FloatA
     )
     if points.has_side.any():
         level = level + points.has_side * gain_and_phase(points.side, omega_rad_s)[0]
-    return level
+    turning = kind == Quantity.PHASE
+    return np.where(turning, phase, level) if turning.any() else level
 
 
 def _wrapped(angle: FloatArray) -> FloatArray:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import lru_cache
 
 from engine.loop.closed_loop_roots import ClosedLoopRoots, closed_loop_roots
 from engine.loop.crossings import LISTED_AT_MOST, Crossings, Found, find_crossings
@@ -29,6 +30,15 @@ from engine.loop.steady_state import error_constants, final_errors
 from engine.model.factored import ComplexArray, FloatArray
 
 __all__ = ["CaseFrequency", "FrequencyView", "GainCrossover", "PhaseCrossover", "read_frequency"]
+
+
+@dataclass(frozen=True, eq=False)
+class Prepared:
+    """What the readings at chosen frequencies share with the whole view."""
+
+    samples: Sampled
+    found: Found
+    roots: ClosedLoopRoots
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,9 +83,8 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
     properties of L alone, and the raw crossings stay. A crossover that only touches 0 dB counts for the margins but
     is no downward crossing.
     """
-    samples = sampled(loops)
-    found = find_crossings(samples)
-    roots = closed_loop_roots(loops)
+    ready = prepared(loops)
+    samples, found, roots = ready.samples, ready.found, ready.roots
     verdicts = decide_stability(samples, found, roots)
     peaks = find_peaks(samples, found, roots)
     cases = tuple(_case(samples, found, roots, peaks, verdict, case) for case, verdict in enumerate(verdicts))
@@ -86,6 +95,13 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
         cases,
         roots,
     )
+
+
+@lru_cache(maxsize=4)
+def prepared(loops: LoopSet) -> Prepared:
+    """Grid, crossings and closed-loop roots; a loop set is told by identity, so one assessment computes them once."""
+    samples = sampled(loops)
+    return Prepared(samples, find_crossings(samples), closed_loop_roots(loops))
 
 
 def _case(

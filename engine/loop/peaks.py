@@ -6,17 +6,16 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
-from engine.loop.closed_loop_gain import Points, Quantity, level_slope_bend
+from engine.loop.closed_loop_gain import Quantity
 from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.crossings import Found
 from engine.loop.grid import Sampled
 from engine.loop.limits import Limits, limits_of
+from engine.loop.narrow import narrow_places
+from engine.loop.polish import Tasks, joined_tasks, polished
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
-
-BoolArray = NDArray[np.bool_]
 
 PEAKS = (Quantity.SENSITIVITY, Quantity.COMPLEMENTARY, Quantity.EFFORT, Quantity.DISK)
 _WORTH_POLISHING = math.log(0.9)
@@ -37,24 +36,12 @@ class Peaks:
     """(c,) lowest ω with |T| = |T(0)|/√2; nan where there is none."""
 
 
-@dataclass(frozen=True, eq=False)
-class _Tasks:
-    """Points to polish, each inside [left, right]; `level` is nan for a peak, else the value to be met."""
-
-    quantity: IntArray
-    case: IntArray
-    left: FloatArray
-    start: FloatArray
-    right: FloatArray
-    level: FloatArray
-
-
 def find_peaks(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Peaks:
     """The suprema and the bandwidth of every case."""
     rows = _sampled_levels(samples)
     cases = rows.shape[1]
     limits = limits_of(samples)
-    tasks = _joined(
+    tasks = joined_tasks(
         _grid_candidates(samples, rows),
         _narrow_candidates(samples, found, roots),
         _bandwidth_tasks(samples, rows[1], limits),
@@ -78,41 +65,6 @@ def find_peaks(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Peaks:
     return Peaks(np.where(inner, top, best), np.where(inner, top_at, at), bandwidth)
 
 
-def polished(samples: Sampled, tasks: _Tasks) -> tuple[FloatArray, FloatArray]:
-    """Frequencies and ln values: Newton's method kept inside the brackets by the sign of the slope."""
-    omega = tasks.start.copy()
-    if not len(omega):
-        return omega, omega
-    points = Points.of(samples, tasks.quantity, tasks.case)
-    left, right = tasks.left.copy(), tasks.right.copy()
-    to_level = ~np.isnan(tasks.level)
-    best_omega, best = omega.copy(), np.full(len(omega), -math.inf)
-    for _ in range(60):
-        level, slope, bend = level_slope_bend(points, omega)
-        better = (level > best) | to_level
-        best, best_omega = np.where(better, level, best), np.where(better, omega, best_omega)
-        miss = level - tasks.level
-        # A level is met on a falling stretch: above it, the place lies further right.
-        onward = np.where(to_level, miss > 0, slope > 0)
-        left, right = np.where(onward, omega, left), np.where(onward, right, omega)
-        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-            move = np.where(to_level, -miss / slope, np.where(bend < 0, -slope / bend, math.nan))
-            after = omega * np.exp(move)
-            outside = ~((after > left) & (after < right))
-        middle = np.sqrt(left) * np.sqrt(right)
-        after = np.where(outside, np.where(np.abs(move) < 1e-13, omega, middle), after)
-        moved = np.abs(after - omega)
-        # Near a maximum the value is flat: 1e-8 of the way in ω is far below 1e-12 in value for peaks whose
-        # width is above 1e-4, and the bracket ends narrower ones.
-        done = (moved <= np.where(to_level, 1e-12, 1e-9) * omega) | (right - left <= 1e-14 * omega)
-        omega = after
-        if done.all():
-            break
-    level = level_slope_bend(points, omega)[0]
-    better = (level > best) | to_level
-    return np.where(better, omega, best_omega), np.where(better, level, best)
-
-
 def _sampled_levels(samples: Sampled) -> FloatArray:
     """(4, c, n) ln of the four gains on the grid."""
     gain = np.clip(samples.nodes.gain, -_LARGE, _LARGE)
@@ -129,7 +81,7 @@ def _sampled_levels(samples: Sampled) -> FloatArray:
     return rows
 
 
-def _grid_candidates(samples: Sampled, rows: FloatArray) -> _Tasks:
+def _grid_candidates(samples: Sampled, rows: FloatArray) -> Tasks:
     omega = samples.nodes.omega_rad_s
     middle = rows[:, :, 1:-1]
     highest = rows.max(axis=2, keepdims=True)
@@ -144,7 +96,7 @@ def _grid_candidates(samples: Sampled, rows: FloatArray) -> _Tasks:
     lean = np.clip(0.5 * (before - after) / np.minimum(before - 2.0 * here + after, -1e-300), -0.9, 0.9)
     left, mid, right = omega[column - 1], omega[column], omega[column + 1]
     start = mid * np.where(lean > 0, right / mid, mid / left) ** lean
-    return _Tasks(quantity, case, left, start, right, np.full(len(mid), math.nan))
+    return _peak_tasks(quantity, case, left, start, right)
 
 
 def _greatest_per_row(
@@ -163,39 +115,14 @@ def _greatest_per_row(
     return quantity[chosen], case[chosen], column[chosen]
 
 
-def _narrow_candidates(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> _Tasks:
-    """Lightly damped closed-loop poles and near passages of −1, which may hide between two samples."""
-    omega = samples.nodes.omega_rad_s
-    size = np.abs(roots.roots)
-    with np.errstate(invalid="ignore"):
-        light = (roots.roots.imag > 0) & (np.abs(roots.roots.real) < 0.05 * size)
-    case, column = np.nonzero(light)
-    at = roots.roots.imag[case, column]
-    extra = [(case, at)]
-    for points in (found.gain, found.phase):
-        # |1+L| below 1/3 or so: only there can a peak be much narrower than the spacing of the samples.
-        near = np.abs(points.gain) + np.abs(np.sin(0.5 * (points.phase + math.pi))) < 0.35
-        if near.any():
-            extra.append((points.case[near], points.omega_rad_s[near]))
-    case = np.concatenate([part for part, _ in extra])
-    at = np.concatenate([part for _, part in extra])
-    inside = (at > omega[0]) & (at < omega[-1])
-    case, at = case[inside], at[inside]
-    place = np.searchsorted(omega, at)
+def _narrow_candidates(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Tasks:
+    case, at, left, right = narrow_places(samples, found, roots)
     count = len(PEAKS)
     quantity = np.repeat(np.array(PEAKS, dtype=np.int64), len(at))
-    left, right = np.maximum(omega[place - 1], at * 0.97), np.minimum(omega[place], at * 1.03)
-    return _Tasks(
-        quantity,
-        np.tile(case, count),
-        np.tile(left, count),
-        np.tile(at, count),
-        np.tile(right, count),
-        np.full(len(quantity), math.nan),
-    )
+    return _peak_tasks(quantity, np.tile(case, count), np.tile(left, count), np.tile(at, count), np.tile(right, count))
 
 
-def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> _Tasks:
+def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> Tasks:
     """One bracket per case around the lowest frequency at which |T| has fallen by √2."""
     omega = samples.nodes.omega_rad_s
     goal = limits.at_zero[1] - 0.5 * math.log(2.0)
@@ -209,15 +136,11 @@ def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> _T
         share = (high - goal[case]) / np.maximum(high - low, 1e-300)
     share = np.where(np.isfinite(share), np.clip(share, 0.0, 1.0), 0.5)
     quantity = np.full(len(case), int(Quantity.COMPLEMENTARY), dtype=np.int64)
-    return _Tasks(quantity, case, left, left * (right / left) ** share, right, goal[case])
+    count = len(case)
+    start = left * (right / left) ** share
+    return Tasks(quantity, case, left, start, right, goal[case], np.ones(count), np.zeros(count))
 
 
-def _joined(*parts: _Tasks) -> _Tasks:
-    return _Tasks(
-        np.concatenate([part.quantity for part in parts]),
-        np.concatenate([part.case for part in parts]),
-        np.concatenate([part.left for part in parts]),
-        np.concatenate([part.start for part in parts]),
-        np.concatenate([part.right for part in parts]),
-        np.concatenate([part.level for part in parts]),
-    )
+def _peak_tasks(quantity: IntArray, case: IntArray, left: FloatArray, start: FloatArray, right: FloatArray) -> Tasks:
+    count = len(case)
+    return Tasks(quantity, case, left, start, right, np.full(count, math.nan), np.ones(count), np.zeros(count))

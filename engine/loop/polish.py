@@ -1,0 +1,80 @@
+"""Extrema and levels of the loop's quantities, polished from brackets: many points in one batch."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, fields
+
+import numpy as np
+
+from engine.loop.closed_loop_gain import Points, level_slope_bend, log_level
+from engine.loop.grid import Sampled
+from engine.loop.sections import IntArray
+from engine.model.factored import FloatArray
+
+
+@dataclass(frozen=True, eq=False)
+class Tasks:
+    """Points (p,) to polish, each inside [left, right]."""
+
+    quantity: IntArray
+    case: IntArray
+    left: FloatArray
+    start: FloatArray
+    right: FloatArray
+    level: FloatArray
+    """The value to be met on a falling stretch; nan where an extreme is sought."""
+    sign: FloatArray
+    """+1 for a greatest, −1 for a least value."""
+    tilt: FloatArray
+    """The extreme is that of the quantity less tilt·ln ω."""
+
+
+def joined_tasks(*parts: Tasks) -> Tasks:
+    """All points in one batch, in order."""
+    return Tasks(*(np.concatenate([getattr(part, field.name) for part in parts]) for field in fields(Tasks)))
+
+
+def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
+    """Frequencies and values (ln, or rad for a phase): Newton's method kept inside the brackets by the slope's sign.
+
+    An extreme is never reported worse than any value that was met on the way.
+    """
+    omega = tasks.start.copy()
+    if not len(omega):
+        return omega, omega
+    points = Points.of(samples, tasks.quantity, tasks.case)
+    left, right = tasks.left.copy(), tasks.right.copy()
+    to_level = ~np.isnan(tasks.level)
+    best_omega, best = omega.copy(), np.full(len(omega), -math.inf)
+    for _ in range(60):
+        level, slope, bend = level_slope_bend(points, omega)
+        height = _height(tasks, level, omega)
+        slope, bend = tasks.sign * (slope - tasks.tilt), tasks.sign * bend
+        better = (height > best) | to_level
+        best, best_omega = np.where(better, height, best), np.where(better, omega, best_omega)
+        miss = level - tasks.level
+        # A level is met on a falling stretch: above it, the place lies further right.
+        onward = np.where(to_level, miss > 0, slope > 0)
+        left, right = np.where(onward, omega, left), np.where(onward, right, omega)
+        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+            move = np.where(to_level, -miss / slope, np.where(bend < 0, -slope / bend, math.nan))
+            after = omega * np.exp(move)
+            outside = ~((after > left) & (after < right))
+        middle = np.clip(np.sqrt(left) * np.sqrt(right), left, right)
+        after = np.where(outside, np.where(np.abs(move) < 1e-13, omega, middle), after)
+        moved = np.abs(after - omega)
+        # A step of Newton's method this small leaves an error of its square over the width of the extreme.
+        done = (moved <= 1e-9 * omega) | (right - left <= 1e-14 * omega)
+        omega = after
+        if done.all():
+            break
+    level = log_level(points, omega)
+    better = (_height(tasks, level, omega) >= best) | to_level
+    omega = np.where(better, omega, best_omega)
+    return omega, np.where(better, level, tasks.sign * best + tasks.tilt * np.log(omega))
+
+
+def _height(tasks: Tasks, level: FloatArray, omega: FloatArray) -> FloatArray:
+    height: FloatArray = tasks.sign * (level - tasks.tilt * np.log(omega))
+    return height
