@@ -21,8 +21,9 @@ _OPEN_LINE = re.compile(r"is open at (http://\S+)/")
 class WorkbenchProcess:
     """Starts a server on a free port (or the one named) and knows its address."""
 
-    def __init__(self, store: Path, port: int = 0, **environment: str) -> None:
+    def __init__(self, store: Path, port: int = 0, folder: Path = CLONE, **environment: str) -> None:
         self.store = store
+        self._folder = folder
         self._port = port
         self._environment = environment
         self.lines: list[str] = []
@@ -32,7 +33,7 @@ class WorkbenchProcess:
         inherited = {name: text for name, text in os.environ.items() if not name.startswith("LOOPWRIGHT_")}
         self._process = subprocess.Popen(
             [sys.executable, "-m", "server", "serve", "--no-browser", "--port", str(self._port)],
-            cwd=CLONE,
+            cwd=self._folder,
             env={**inherited, "LOOPWRIGHT_STORE": str(self.store), **self._environment},
             stdout=subprocess.PIPE,
             stderr=subprocess.STDOUT,
