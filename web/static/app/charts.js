@@ -93,9 +93,9 @@ function makeLayers(/** @type {SVGElement} */ overlay, /** @type {Scene} */ scen
   const guide = svg("path", { class: "guide" });
   guides.append(guide);
   const bars = group("marks");
-  const lanes = rail(group("rail"), scene, hand);
   const corners = markers(group("markers"), scene, hand);
   const grip = crossoverGrip(group("grips"), scene, hand);
+  const lanes = rail(group("rail"), scene, hand);
   const marks = markLayer(bars, group("mark-labels"), scene);
   const reading = readingFlag(group("readings"));
   const pennant = flag(group("flags"));

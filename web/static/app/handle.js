@@ -28,7 +28,8 @@ const FINE = 0.1;
 const REST_MS = 700;
 const REACH = 14;
 
-/** @param {Hand} hand @param {Grasp} grasp @param {{class?: string, reach?: number | null, orientation?: string}} [look]
+/** @param {Hand} hand @param {Grasp} grasp @param {{class?: string, reach?: number | null, orientation?: string, where?: string}} [look]
+ *  `reach`: radius of the target, null where the drawing is the target; `where` tells twins apart for a screen reader
  *  @param {...Node} drawing what is seen @returns {{node: SVGElement, grasp: Grasp, speak: () => void}} */
 export function handle(hand, grasp, look = {}, ...drawing) {
   const target = look.reach === null ? [] : [svg("circle", { class: "reach", r: look.reach ?? REACH })];
@@ -38,7 +39,7 @@ export function handle(hand, grasp, look = {}, ...drawing) {
   const speak = () => {
     const [least, most] = grasp.ends();
     set(node, {
-      "aria-label": grasp.name(), "aria-valuemin": rounded(least), "aria-valuemax": rounded(most),
+      "aria-label": look.where ? `${grasp.name()}, ${look.where}` : grasp.name(), "aria-valuemin": rounded(least), "aria-valuemax": rounded(most),
       "aria-valuenow": rounded(grasp.value()), "aria-valuetext": grasp.text(),
     });
   };

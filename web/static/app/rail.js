@@ -84,7 +84,7 @@ function makeLane(/** @type {Scene} */ scene, /** @type {Hand} */ hand, /** @typ
   const drawHandles = keyed(marks, (/** @type {any} */ corner) => `${corner.id} ${corner.kind}`,
     (corner) => {
       const place = { x: 0, y: 0 };
-      const made = handle(hand, cornerGrasp(scene, corner.id, () => place), { class: `rail-handle ${corner.kind}` }, svg("circle", { class: "glow", r: 13 }), glyph(corner.kind));
+      const made = handle(hand, cornerGrasp(scene, corner.id, () => place), { class: `rail-handle ${corner.kind}`, where: "on the rail" }, svg("circle", { class: "glow", r: 13 }), glyph(corner.kind));
       return { ...made, place };
     },
     (part, corner) => {
