@@ -5,11 +5,14 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import cast
+
+import numpy as np
 
 from engine.design.document import Requirement
 from engine.design.measures import MEASURES, SCALE_STEP, Measure, Side
 from engine.design.wording import number, quantity
-from engine.loop.at_frequency import extreme_over, level_at, worst_against_mask
+from engine.loop.at_frequency import BandQuantity, extreme_over, level_at, worst_against_mask
 from engine.loop.loop_set import LoopSet
 from engine.loop.reading import Reading, value, without_value
 
@@ -64,7 +67,11 @@ def slack_of(scale: str, side: Side, found: float, limit: float) -> float:
         room = 0.0 if found == limit else math.copysign(MOST_SLACK, 1.0 if better else -1.0)
     else:
         # log1p keeps the sign right when value and limit agree to the last digits.
-        room = math.log1p((found - limit) / limit) if abs(found - limit) < 0.5 * limit else math.log(found / limit)
+        room = (
+            math.log1p((found - limit) / limit)
+            if abs(found - limit) < 0.5 * limit
+            else math.log(found) - math.log(limit)
+        )
         room = room if side == "at_least" else -room
     return min(max(room, -MOST_SLACK), MOST_SLACK)
 
@@ -123,14 +130,14 @@ def _judge_at_frequencies(row: Requirement, measure: Measure, loops: LoopSet) ->
     if row.at_most is not None:
         sides.append(("at_most", row.at_most))
     per_side = []
+    quantity = cast(BandQuantity, measure.name)
     for side, limit in sides:
         if row.at_rad_s is not None:
-            levels = level_at(loops, measure.name, row.at_rad_s)
+            levels = level_at(loops, quantity, row.at_rad_s)
             places = [row.at_rad_s] * loops.count
         else:
             low, high = row.over_rad_s or (math.nan, math.nan)
-            which = "least" if side == "at_least" else "greatest"
-            levels, found_at = extreme_over(loops, measure.name, low, high, which)
+            levels, found_at = extreme_over(loops, quantity, low, high, "least" if side == "at_least" else "greatest")
             places = [float(place) for place in found_at]
         per_side.append([
             _one_side(measure, _level(float(level), place), side, limit)
@@ -141,7 +148,8 @@ def _judge_at_frequencies(row: Requirement, measure: Measure, loops: LoopSet) ->
 
 def _judge_mask(row: Requirement, measure: Measure, loops: LoopSet) -> list[Judged]:
     side: Side = row.mask_side or measure.usual
-    levels, limits, places = worst_against_mask(loops, measure.name, row.mask, side)
+    mask = np.array(row.mask, dtype=np.float64)
+    levels, limits, places = worst_against_mask(loops, cast(BandQuantity, measure.name), mask, side)
     return [
         _one_side(measure, _level(float(level), float(place)), side, float(limit))
         for level, limit, place in zip(levels, limits, places, strict=True)

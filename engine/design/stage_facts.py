@@ -2,16 +2,14 @@
 
 from __future__ import annotations
 
+import cmath
 import math
 from collections.abc import Mapping
 from typing import Any
 
-import numpy as np
-
 from engine.design import document as doc
 from engine.design.resolve import stage_of
 from engine.loop.reading import Reading
-from engine.model.evaluate import response
 from engine.model.factored import Factored
 
 TRADE_NAMES = {
@@ -78,11 +76,15 @@ def _own_facts(stage: Any) -> dict[str, float]:
 def _at_crossover(stage: Factored, crossover_rad_s: float | None) -> dict[str, float]:
     if crossover_rad_s is None or crossover_rad_s <= 0:
         return {}
-    there = complex(response(stage, np.array([1j * crossover_rad_s]))[0])
-    if not (0 < abs(there) < math.inf):
+    s = complex(0.0, crossover_rad_s)
+    up = [s - root for root in stage.zeros.tolist()]
+    down = [s - root for root in stage.poles.tolist()]
+    if not (all(up) and all(down)):
         return {}
+    phase_rad = sum(map(cmath.phase, up)) - sum(map(cmath.phase, down)) + (math.pi if stage.gain < 0 else 0.0)
+    level = math.log10(abs(stage.gain)) + sum(math.log10(abs(a)) for a in up) - sum(math.log10(abs(a)) for a in down)
     return {
         "crossover_rad_s": crossover_rad_s,
-        "phase_at_crossover_deg": math.degrees(math.atan2(there.imag, there.real)),
-        "gain_at_crossover_db": 20 * math.log10(abs(there)),
+        "phase_at_crossover_deg": math.degrees(phase_rad),
+        "gain_at_crossover_db": 20 * level,
     }
