@@ -133,6 +133,24 @@ def test_damping_keeps_its_digits() -> None:
     np.testing.assert_allclose(roots_of(product).real, [-1e-10, -1e-10, -1.5e-10, -1.5e-10], rtol=ULP)
 
 
+def test_damping_far_below_the_first_precision() -> None:
+    # By hand: (s² + 2e-60 s + 1)(s² + s + 3); 160 bits leave noise of 1e-48 in the real part.
+    light = [Fraction(1), Fraction(2, 10**60), Fraction(1)]
+    product = [Fraction(0)] * 5
+    for i, a in enumerate(light):
+        for j, b in enumerate((1, 1, 3)):
+            product[i + j] += a * b
+    assert roots_of(product).real.tolist() == [-1e-60, -1e-60, -0.5, -0.5]
+
+
+@pytest.mark.parametrize("bits", range(30, 48, 2))
+@pytest.mark.parametrize("count", [3, 4, 5, 6])
+def test_tight_clusters_are_resolved_to_the_last_place(bits: int, count: int) -> None:
+    # Exact by construction: −1 − k·2^-bits are doubles.
+    cluster = [-1 - Fraction(k, 2**bits) for k in range(count)]
+    assert roots_of(expanded(cluster)).tolist() == [float(r) for r in cluster]
+
+
 def test_spread_over_twelve_decades() -> None:
     # Exact by construction: corners 1e-6 … 1e6 rad/s, each twice.
     corners = [-(Fraction(10) ** k) for k in range(-6, 7) for _ in range(2)]

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
+import mpmath
 import numpy as np
 import pytest
 from hypothesis import given
@@ -94,6 +95,15 @@ def test_pairs_are_exact_conjugates(w: float, zeta: float) -> None:
     assert first.imag > 0
     assert second == first.conjugate()
     np.testing.assert_allclose([abs(first), first.real], [w, -zeta * w], rtol=1e-15)
+
+
+@pytest.mark.parametrize("short", [1e-3, 1e-9, 2.0**-50])
+def test_nearly_critical_damping_keeps_its_digits(short: float) -> None:
+    # Second method: √(1 − ζ²) at 40 digits; formed in doubles it loses half of them.
+    zeta = 1 - short
+    with mpmath.workdps(40):
+        want = float(mpmath.sqrt(1 - mpmath.mpf(zeta) ** 2))
+    np.testing.assert_allclose(stages.complex_poles(1, zeta).poles[0].imag, want, rtol=4e-16)
 
 
 def test_rational() -> None:
