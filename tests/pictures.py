@@ -55,7 +55,7 @@ def main() -> None:
 
 def hold(page: Page, rad_s: float) -> None:
     """Take hold of the marker on the magnitude curve and move it to `rad_s`; it stays held."""
-    handle = page.get_by_role("slider", name=HANDLE).first
+    handle = page.get_by_role("slider", name=HANDLE, exact=True)
     x, y = middle(handle)
     page.mouse.move(x, y)
     page.mouse.down()

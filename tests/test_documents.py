@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import json
 import re
 import shlex
 import subprocess
@@ -15,9 +16,12 @@ from typing import Any, get_args
 import pytest
 
 from engine.design import document as doc
+from engine.design.assess import assess
 from engine.design.document import Design
 from engine.design.limits import Limits
 from engine.design.measures import MEASURES
+from engine.design.parse import parse_design
+from engine.design.purposes import stage_for
 from engine.design.transfer_function import CAUTIONS
 from server.application import web_application
 from server.export_kinds import EXPORTS
@@ -141,6 +145,35 @@ def test_the_exit_codes_are_the_contract() -> None:
         command_line.UNUSABLE: "unusable input",
         command_line.NOT_ASSESSABLE: "not assessable",
     }
+
+
+WALK = README.split("## Five minutes")[1].split("\n## ")[0]
+
+
+def test_the_walk_prints_what_check_prints() -> None:
+    printed = loopwright("check", "demo_plants/falcon-pan.json")
+    assert printed.returncode == 1
+    assert printed.stdout.rstrip() in WALK
+
+
+def test_the_walk_has_the_landing_demos_numbers() -> None:
+    words = " ".join(WALK.split())
+    document = json.loads((CLONE / "demo_plants" / "falcon-pan.json").read_text("utf-8"))
+    lead = document["compensator"]["stages"][0]
+    assert f"the o at {lead['zero_rad_s']:.2f} rad/s" in words
+    lead["zero_rad_s"] = 8.0
+    assessment = assess(parse_design(document))
+    margin = assessment["requirements"][0]["reading"]["value"]
+    assert "to 8.00 rad/s" in words
+    assert f"The phase margin now reads {margin:.1f}°" in words
+    assert assessment["headline"].rstrip(".").lower() in words
+    document["compensator"]["stages"].append(stage_for(parse_design(document), "roll off noise").stage)
+    short = [row["measure"] for row in assess(parse_design(document))["requirements"] if not row["met"]]
+    assert "phase_margin_deg" in short
+    lead["zero_rad_s"] = 5.4
+    document["compensator"]["stages"].pop()
+    too_far = {row["measure"]: row["case"] for row in assess(parse_design(document))["requirements"] if not row["met"]}
+    assert too_far == {"peak_sensitivity": "300 mm lens"}
 
 
 def test_pictures_and_links_lead_somewhere() -> None:
