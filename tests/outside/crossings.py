@@ -156,7 +156,7 @@ def first_of_interest_rad_s(loop: Loop) -> float:
     sizes = [float(abs(r)) for r in loop.rational.zeros + loop.rational.poles if r != 0]
     if loop.dead_time_s:
         sizes.append(1 / float(loop.dead_time_s))
-    return min(sizes) * 1e-6
+    return min(sizes, default=1.0) * 1e-6
 
 
 def _monotone_places(loop: Loop, axis: Axis, left: float, right: float) -> list[mpf]:

@@ -40,12 +40,20 @@ class DelayedSeries:
 
     loop: Loop
     signal: str
-    digits: int = 200
-    _terms: dict[int, _Term] = field(default_factory=dict)
+    digits: int = 80
+    """Digits of the first attempt; doubled as cancellation demands."""
+    _terms: dict[tuple[int, int], _Term] = field(default_factory=dict)
 
     def value(self, t: mpf) -> mpf:
-        """y(t); just after the kink where t is a whole number of dead times."""
-        with mp.workdps(self.digits):
+        """y(t) to 25 digits; just after the kink where t is a whole number of dead times."""
+        for digits in (self.digits, 2 * self.digits, 4 * self.digits, 8 * self.digits):
+            found = self._value(t, digits)
+            if found is not None:
+                return found
+        raise ArithmeticError(f"{8 * self.digits} digits are too few at t = {mp.nstr(t)}")
+
+    def _value(self, t: mpf, digits: int) -> mpf | None:
+        with mp.workdps(digits):
             theta = self.loop.dead_time_s
             first = 1 if self.signal == "command" else 0
             shift = 1 if self.signal == "load" else 0
@@ -57,14 +65,13 @@ class DelayedSeries:
                 total += sign * value
                 size = max(size, magnitude)
                 k += 1
-            if size * mpf(10) ** (25 - self.digits) > 1 + abs(total):
-                raise ArithmeticError(f"{self.digits} digits are too few at t = {mp.nstr(t)}")
-            return total
+            return total if size * mpf(10) ** (25 - digits) <= abs(total) or size == 0 else None
 
     def _term(self, k: int) -> _Term:
-        if k not in self._terms:
-            self._terms[k] = _inverse(_powers(self._base(), self.loop.rational, k))
-        return self._terms[k]
+        key = (k, mp.dps)
+        if key not in self._terms:
+            self._terms[key] = _inverse(_powers(self._base(), self.loop.rational, k))
+        return self._terms[key]
 
     def _base(self) -> Part | None:
         return {"command": None, "load": self.loop.plant, "effort": self.loop.compensator}[self.signal]

@@ -99,7 +99,8 @@ def roots(coefficients: Sequence, wanted: Callable[[mpc], bool] = lambda root: T
                     break
         else:
             raise ArithmeticError("polynomial roots do not settle at 640 digits")
-    return [mpc(0)] * at_origin + found
+    dust = mpf(2) ** -ACCURACY_BITS  # an imaginary part below the error bound is no imaginary part
+    return [mpc(0)] * at_origin + [mpc(mp.re(z)) if abs(mp.im(z)) <= dust * abs(z) else z for z in found]
 
 
 def _error_bound(a: Sequence, z: mpc) -> mpf:

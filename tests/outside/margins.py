@@ -58,7 +58,7 @@ def error_constants(loop: Loop) -> dict[str, Value]:
     order = sum(1 for p in part.poles if p == 0) - sum(1 for z in part.zeros if z == 0)
     gain = _low_frequency_gain(loop)
     names = ("position_error_constant", "velocity_error_constant", "acceleration_error_constant")
-    return {name: UNBOUNDED if order > k else gain if order == k else mpf(0) for k, name in enumerate(names)}
+    return {name: UNLIMITED if order > k else gain if order == k else mpf(0) for k, name in enumerate(names)}
 
 
 def final_errors(loop: Loop) -> dict[str, Value]:

@@ -35,7 +35,7 @@ def supremum(loop: Loop, kind: str) -> tuple[mpf, mpf]:
     return _delayed_supremum(loop, kind) if loop.dead_time_s else _rational_supremum(loop, kind)
 
 
-def _fraction(loop: Loop, kind: str) -> tuple[list, list]:
+def closed_loop_fraction(loop: Loop, kind: str) -> tuple[list, list]:
     """Numerator and denominator polynomials, hidden cancellations kept, of a rational loop."""
     part = loop.rational
     above = {
@@ -49,7 +49,7 @@ def _fraction(loop: Loop, kind: str) -> tuple[list, list]:
 
 def _rational_supremum(loop: Loop, kind: str) -> tuple[mpf, mpf]:
     """Compare ω = 0, ω = ∞ and every stationary point: roots of A'B − AB', where |·|² = A/B in x = ω²."""
-    above, below = _fraction(loop, kind)
+    above, below = closed_loop_fraction(loop, kind)
     a, b = polynomial.magnitude_squared(above), polynomial.magnitude_squared(below)
     while a[0] == 0 and b[0] == 0:
         a, b = a[1:], b[1:]
@@ -219,7 +219,7 @@ def _log_slope(loop: Loop, kind: str) -> Callable[[mpf], mpf]:
 
 def _limit_at_zero(loop: Loop, kind: str) -> mpf:
     """The quantity at ω → 0: the dead time does not matter there."""
-    above, below = _fraction(loop, kind)
+    above, below = closed_loop_fraction(loop, kind)
     order_above = next((i for i, x in enumerate(above) if x != 0), 0)
     order_below = next(i for i, x in enumerate(below) if x != 0)
     if order_above != order_below:
