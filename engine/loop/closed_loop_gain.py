@@ -9,7 +9,7 @@ import numpy as np
 
 from engine.loop.gain_phase import gain_and_phase, slope_and_bend
 from engine.loop.grid import Sampled
-from engine.loop.sections import IntArray, Sections
+from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.model.factored import ComplexArray, FloatArray
 
 
@@ -32,6 +32,11 @@ class Quantity(IntEnum):
     """arg L, in place of a logarithm [rad]"""
 
 
+# Plain numbers: comparing arrays with members of an enumeration is slow.
+_COMPLEMENTARY, _EFFORT, _DISK = int(Quantity.COMPLEMENTARY), int(Quantity.EFFORT), int(Quantity.DISK)
+_LOAD, _LOOP, _PHASE = int(Quantity.LOAD), int(Quantity.LOOP), int(Quantity.PHASE)
+
+
 @dataclass(frozen=True, eq=False)
 class Points:
     """Points (p,), each in one case and for one quantity."""
@@ -39,18 +44,38 @@ class Points:
     quantity: IntArray
     loop: Sections
     """(p,) the factors of each point's own case."""
-    side: Sections
-    """(p,) C where the quantity is EFFORT, P where it is LOAD; elsewhere without meaning."""
+    side: Sections | None
+    """P where P·S is asked for, C where C·S is: (p,) or one case for all points."""
     has_side: FloatArray
     """(p,) 1 where `side` counts, else 0."""
+    complementary: BoolArray
+    disk: BoolArray
+    open_loop: BoolArray
+    """(p,) the quantity is L's own gain or phase."""
+    plain: bool
+    """No point asks for L itself."""
 
     @staticmethod
     def of(samples: Sampled, quantity: IntArray, case: IntArray) -> Points:
         """The factors for points of the given quantities and cases."""
-        load = quantity == Quantity.LOAD
+        load, effort = quantity == _LOAD, quantity == _EFFORT
+        side: Sections | None = None
         # Either all points ask for P·S or none: bands and masks are read one quantity at a time.
-        side = samples.plant.at(case) if load.any() else samples.compensator.at(np.zeros_like(case))
-        return Points(quantity, samples.loop.at(case), side, (load | (quantity == Quantity.EFFORT)).astype(np.float64))
+        if load.any():
+            side = samples.plant.at(case)
+        elif effort.any():
+            side = samples.compensator
+        open_loop = quantity >= _LOOP
+        return Points(
+            quantity,
+            samples.loop.at(case),
+            side,
+            (load | effort).astype(np.float64),
+            quantity == _COMPLEMENTARY,
+            quantity == _DISK,
+            open_loop,
+            not open_loop.any(),
+        )
 
 
 @dataclass(frozen=True, eq=False)
@@ -58,8 +83,8 @@ class ClosedLoop:
     """Everything about 1 + L at points: W = L or 1/L, whichever is the smaller."""
 
     log_gain: FloatArray
-    large: FloatArray
-    """1.0 where |L| > 1."""
+    large: BoolArray
+    """|L| > 1."""
     W: ComplexArray
     one_plus: ComplexArray
     """1 + W."""
@@ -76,7 +101,7 @@ def closed_loop(log_gain: FloatArray, phase: FloatArray) -> ClosedLoop:
     # 1 + W = 1 − e^(ln|W| + j·(angle ± π)); expm1 keeps the digits that 1 + W would cancel.
     return ClosedLoop(
         log_gain,
-        large.astype(np.float64),
+        large,
         np.exp(size + 1j * angle),
         -np.expm1(size + 1j * _wrapped(angle + np.pi)),
         -np.expm1(size + 1j * _wrapped(angle)),
@@ -95,26 +120,21 @@ def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArra
     state = closed_loop(gain, phase)
     first, second = slope_and_bend(points.loop, omega_rad_s)
     W, plus, minus = state.W, state.one_plus, state.one_minus
-    large = state.large > 0
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        small_part, large_part = W / plus, 1.0 / plus
-        S = np.where(large, small_part, large_part)
-        T = np.where(large, large_part, small_part)
-        product = S * T
+        over, part = 1.0 / plus, W / plus
+        S, T = np.where(state.large, part, over), np.where(state.large, over, part)
         # d ln q / d ln L and its own derivative.
-        disk = np.where(large, 2.0, -2.0) * W / (plus * minus)
-        disk_bend = -2.0 * W * (1.0 + W * W) / (plus * minus) ** 2
-        kind = points.quantity
-        open_ = kind >= Quantity.LOOP
-        rate = np.select(
-            [kind == Quantity.COMPLEMENTARY, kind == Quantity.DISK, kind == Quantity.PHASE, open_],
-            [S, disk, -1j, 1.0],
-            -T,
-        )
-        bend = np.select([kind == Quantity.DISK, open_], [disk_bend, 0.0], -product)
-        slope = (rate * first).real
+        both = plus * minus
+        disk = 2.0 * W / both
+        rate = np.where(points.complementary, S, np.where(points.disk, np.where(state.large, disk, -disk), -T))
+        bend = np.where(points.disk, -disk * (1.0 + W * W) / both, -S * T)
+        if not points.plain:
+            rate = np.where(points.open_loop, np.where(points.quantity == _PHASE, -1j, 1.0), rate)
+            bend = np.where(points.open_loop, 0.0, bend)
+        rate_first = rate * first
+        slope = rate_first.real
         curve = (bend * first * first + rate * second).real
-    if points.has_side.any():
+    if points.side is not None:
         side_first, side_second = slope_and_bend(points.side, omega_rad_s)
         slope = slope + points.has_side * side_first.real
         curve = curve + points.has_side * side_second.real
@@ -122,20 +142,18 @@ def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArra
 
 
 def _level(points: Points, omega_rad_s: FloatArray, state: ClosedLoop, phase: FloatArray) -> FloatArray:
-    kind = points.quantity
-    with np.errstate(divide="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore"):
         log_plus = np.log(np.abs(state.one_plus))
         log_minus = np.log(np.abs(state.one_minus))
-    excess = np.maximum(state.log_gain, 0.0)
-    level: FloatArray = np.select(
-        [kind == Quantity.COMPLEMENTARY, kind == Quantity.DISK, kind == Quantity.LOOP],
-        [state.log_gain - excess - log_plus, log_minus - log_plus, state.log_gain],
-        -log_plus - excess,
-    )
-    if points.has_side.any():
+        # |S|, and with it |C·S| and |P·S|; |T| where L is large is 1/|1 + 1/L|.
+        level: FloatArray = -log_plus - np.maximum(state.log_gain, 0.0)
+        of_T = -log_plus + np.minimum(state.log_gain, 0.0)
+    level = np.where(points.complementary, of_T, np.where(points.disk, log_minus - log_plus, level))
+    if points.side is not None:
         level = level + points.has_side * gain_and_phase(points.side, omega_rad_s)[0]
-    turning = kind == Quantity.PHASE
-    return np.where(turning, phase, level) if turning.any() else level
+    if points.plain:
+        return level
+    return np.where(points.open_loop, np.where(points.quantity == _PHASE, phase, state.log_gain), level)
 
 
 def _wrapped(angle: FloatArray) -> FloatArray:

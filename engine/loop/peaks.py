@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from engine.loop.closed_loop_gain import Quantity
+from engine.loop.closed_loop_gain import Points, Quantity, log_level
 from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.crossings import Found
 from engine.loop.grid import Sampled
@@ -43,7 +43,7 @@ def find_peaks(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Peaks:
     limits = limits_of(samples)
     tasks = joined_tasks(
         _grid_candidates(samples, rows),
-        _narrow_candidates(samples, found, roots),
+        _narrow_candidates(samples, found, roots, rows),
         _bandwidth_tasks(samples, rows[1], limits),
     )
     omega, level = polished(samples, tasks)
@@ -115,11 +115,19 @@ def _greatest_per_row(
     return quantity[chosen], case[chosen], column[chosen]
 
 
-def _narrow_candidates(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Tasks:
+def _narrow_candidates(samples: Sampled, found: Found, roots: ClosedLoopRoots, rows: FloatArray) -> Tasks:
+    """The narrow places at which some gain comes near its greatest sample or exceeds it."""
     case, at, left, right = narrow_places(samples, found, roots)
     count = len(PEAKS)
     quantity = np.repeat(np.array(PEAKS, dtype=np.int64), len(at))
-    return _peak_tasks(quantity, np.tile(case, count), np.tile(left, count), np.tile(at, count), np.tile(right, count))
+    case = np.tile(case, count)
+    at, left, right = np.tile(at, count), np.tile(left, count), np.tile(right, count)
+    if len(at):
+        level = log_level(Points.of(samples, quantity, case), at)
+        worth = level > rows.max(axis=2)[quantity, case] + _WORTH_POLISHING
+        quantity, case = quantity[worth], case[worth]
+        at, left, right = at[worth], left[worth], right[worth]
+    return _peak_tasks(quantity, case, left, at, right)
 
 
 def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> Tasks:

@@ -61,11 +61,12 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
             move = np.where(to_level, -miss / slope, np.where(bend < 0, -slope / bend, math.nan))
             after = omega * np.exp(move)
             outside = ~((after > left) & (after < right))
-        middle = np.clip(np.sqrt(left) * np.sqrt(right), left, right)
-        after = np.where(outside, np.where(np.abs(move) < 1e-13, omega, middle), after)
-        moved = np.abs(after - omega)
-        # A step of Newton's method this small leaves an error of its square over the width of the extreme.
-        done = (moved <= 1e-9 * omega) | (right - left <= 1e-14 * omega)
+        # An extreme is settled when the step no longer changes the value; the step itself still squares the error.
+        with np.errstate(invalid="ignore"):
+            still = np.where(to_level, np.abs(move) < 1e-10, np.abs(slope * move) < 1e-13)
+        middle = np.where(still, omega, np.sqrt(left) * np.sqrt(right))
+        after = np.where(outside, np.clip(middle, left, right), after)
+        done = still | (right - left <= np.where(to_level, 1e-14, 1e-10) * omega)
         omega = after
         if done.all():
             break

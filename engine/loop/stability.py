@@ -21,6 +21,7 @@ from engine.model.factored import FloatArray
 BOUNDARY = 1e-10
 _HIDDEN = 1e-9
 """A zero this close to a pole (relative) hides it."""
+_HIDDEN_MODE = "a hidden mode"
 ENDLESS = -1
 """`unstable_poles` of a loop with endlessly many."""
 
@@ -87,7 +88,7 @@ def _levels_below(phase: FloatArray) -> FloatArray:
 
 
 def _verdict(counted: int, rooted: int | None, boundary: str, hidden: str) -> Stability:
-    if boundary:
+    if boundary and not (boundary.startswith(_HIDDEN_MODE) and (rooted or counted)):
         poles = rooted if rooted is not None else max(counted, 0)
         return Stability(False, f"on the stability boundary: {boundary}", poles)
     if rooted is None and counted == ENDLESS:
@@ -138,10 +139,10 @@ def _hidden_on_axis(samples: Sampled) -> list[tuple[int, str]]:
     loop = samples.loop
     found = []
     origin = np.minimum(loop.origin_zeros, loop.integrators + loop.origin_zeros) > 0
-    found += [(case, "a pole and a zero at 0 hide each other") for case in np.nonzero(origin)[0].tolist()]
+    found += [(case, f"{_HIDDEN_MODE} at 0, where a zero covers a pole") for case in np.nonzero(origin)[0].tolist()]
     axis = (loop.root_weight < 0) & (np.abs(loop.root.real) <= 1e-12 * np.abs(loop.root))
     found += [
-        (case, f"a hidden mode at ±{abs(pole.imag):.6g}j rad/s, where a zero covers a pole")
+        (case, f"{_HIDDEN_MODE} at ±{abs(pole.imag):.6g}j rad/s, where a zero covers a pole")
         for case, pole in _covered(samples, axis)
     ]
     return found
