@@ -42,7 +42,7 @@ class Visit:
     def __init__(self, browser: Browser, url: str, **options: Any) -> None:
         self.url = url
         self.troubles: list[str] = []
-        options = {"viewport": {"width": 1280, "height": 900}, "accept_downloads": True, **options}
+        options = {"viewport": {"width": 1280, "height": 900}, "accept_downloads": True, "base_url": url, **options}
         self.context: BrowserContext = browser.new_context(**options)
         self.context.set_default_timeout(15_000)
 

@@ -2,7 +2,7 @@ import { caseRenamed, insertedAt, replacedAt, withCases } from "./design_edits.j
 import { el, textButton } from "./element.js";
 import { field, placeFaults, textInput } from "./field.js";
 import { modelEntry } from "./model_entry.js";
-import { faultsOf } from "./request.js";
+import { judgedEdit } from "./judged_edit.js";
 import { sheet } from "./sheet.js";
 
 /**
@@ -21,7 +21,7 @@ export function caseEditor(root, store) {
   const form = el("form", { class: "form", novalidate: true, on: { submit: keep } }, nameField.node, entry.node, rest);
   window_.body.append(form);
   const keepButton = el("button", { type: "button", class: "strong", on: { click: () => form.requestSubmit() } });
-  window_.foot.append(keepButton, textButton("cancel", window_.close, { class: "quiet" }));
+  window_.foot.append(keepButton, textButton("cancel", () => window_.close(), { class: "quiet" }));
   let index = null;
 
   async function keep(event) {
@@ -33,13 +33,12 @@ export function caseEditor(root, store) {
     if (!model || nameField.fault()) return form.querySelector("[aria-invalid=true]")?.focus();
     const at = index ?? store.design.plant_cases.length;
     const change = changeTo(at, { name: name.value.trim(), model });
-    const faults = await faultsOf(change(store.design));
+    const faults = await judgedEdit(store, `${index === null ? "add" : "change"} ${name.value.trim()}`, change);
     if (faults.length > 0) {
       await entry.settled();
       return placeFaults(new Map([["name", nameField], ...entry.fields()]), faults, `plant_cases[${at}]`, rest);
     }
-    store.edit(`${index === null ? "add" : "change"} ${name.value.trim()}`, change);
-    window_.close();
+    window_.close(() => document.querySelector(`[data-case="${at}"] [data-act="edit"]`)?.focus());
   }
 
   function changeTo(at, written) {

@@ -68,7 +68,6 @@ export function exactNumber({ name, show, typed = exact, read = typedNumber, kee
       else complain(refused);
     };
     input.addEventListener("keydown", (event) => {
-      event.stopPropagation();
       if (event.key === "Enter") {
         event.preventDefault();
         finish(false);

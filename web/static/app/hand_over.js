@@ -30,7 +30,7 @@ export function handOver(root, store) {
   const download = el("button", { type: "button", class: "strong", on: { click: () => keepFile(`${fileStem(design.title)}-${form.kind}.${form.ending}`, text, form.type) } });
   const copy = el("button", { type: "button", class: "outlined", text: "copy", on: { click: () => copyText(text, copy) } });
   window_.body.append(el("div", { class: "hand-over" }, el("div", {}, verdict, cautions()), el("div", { class: "hand-over-file" }, forms, fault, preview)));
-  window_.foot.append(download, copy, textButton("close", window_.close, { class: "quiet" }));
+  window_.foot.append(download, copy, textButton("close", () => window_.close(), { class: "quiet" }));
   let design = null;
   let form = FORMS[0];
   let text = "";

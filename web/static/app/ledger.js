@@ -1,7 +1,7 @@
 import { copyNotice } from "./copy_notice.js";
 import { moved, removedAt, replacedAt, withRequirements } from "./design_edits.js";
 import { el, setText, textButton } from "./element.js";
-import { faultsOf } from "./request.js";
+import { judgedEdit } from "./judged_edit.js";
 import { requirementEditor } from "./requirement_editor.js";
 import { requirementRow, sentence } from "./requirement_row.js";
 import { measureFacts } from "./requirement_words.js";
@@ -125,10 +125,8 @@ function rowActions(store, focus) {
     focus,
     async keepLimit(index, side, value) {
       const change = (design) => withRequirements(design, (list) => replacedAt(list, index, { ...list[index], [side]: value }));
-      const faults = await faultsOf(change(store.design));
-      if (faults.length > 0) return faults[0].what;
-      store.edit(`limit of ${label(index)}`, change);
-      return null;
+      const faults = await judgedEdit(store, `limit of ${label(index)}`, change);
+      return faults[0]?.what ?? null;
     },
     move(index, to) {
       store.edit(`move ${label(index)}`, (design) => withRequirements(design, (list) => moved(list, index, to)));

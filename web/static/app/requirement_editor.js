@@ -2,8 +2,9 @@ import { insertedAt, replacedAt, withRequirements } from "./design_edits.js";
 import { el, textButton } from "./element.js";
 import { choice, field, placeFaults, textInput } from "./field.js";
 import { exact } from "./format.js";
+import { judgedEdit } from "./judged_edit.js";
 import { measurePicker } from "./measure_picker.js";
-import { ask, faultsOf } from "./request.js";
+import { ask } from "./request.js";
 import { requirementPlaces } from "./requirement_places.js";
 import { measureFacts, unitOf } from "./requirement_words.js";
 import { sheet } from "./sheet.js";
@@ -43,7 +44,7 @@ export function requirementEditor(root, store) {
     fields.get("measure").node, places.node, limits, fields.get("cases").node, fields.get("rank").node, fields.get("reason").node, rest);
   window_.body.append(form);
   const keepButton = el("button", { type: "button", class: "strong", on: { click: () => form.requestSubmit() } });
-  window_.foot.append(keepButton, textButton("cancel", window_.close, { class: "quiet" }));
+  window_.foot.append(keepButton, textButton("cancel", () => window_.close(), { class: "quiet" }));
 
   let index = null;
   let facts = null;
@@ -123,11 +124,9 @@ export function requirementEditor(root, store) {
     if (!requirement) return form.querySelector("[aria-invalid=true]")?.focus();
     const at = index ?? (store.design.requirements ?? []).length;
     const change = (design) => withRequirements(design, (list) => (index === null ? insertedAt(list, at, requirement) : replacedAt(list, at, requirement)));
-    const faults = await faultsOf(change(store.design));
+    const faults = await judgedEdit(store, `${index === null ? "add" : "change"} ${facts.label}`, change);
     if (faults.length > 0) return placeFaults(new Map([...fields, ...places.places()]), faults, `requirements[${at}]`, rest);
-    store.edit(`${index === null ? "add" : "change"} ${facts.label}`, change);
-    window_.close();
-    document.querySelector(`.requirement[data-row="${at}"] .requirement-measure`)?.focus();
+    window_.close(() => document.querySelector(`.requirement[data-row="${at}"] .requirement-measure`)?.focus());
   }
 
   async function ensureMeasures() {

@@ -2,7 +2,7 @@ import { withField } from "./design_edits.js";
 import { el } from "./element.js";
 import { choice, field, textInput } from "./field.js";
 import { exact } from "./format.js";
-import { faultsOf } from "./request.js";
+import { judgedEdit } from "./judged_edit.js";
 import { numberFault, typedNumberOrNone } from "./typed_number.js";
 
 /** The quiet facts around the loop: what is commanded, what loads it, what the signals are called, what the actuator can do. */
@@ -69,16 +69,12 @@ function entryOf(store, part) {
     const value = part.kind === "number" ? typedNumberOrNone(control.value) : control.value === "" ? undefined : control.value;
     const wrong = typeof value === "number" ? numberFault(control.value, value) : null;
     if (wrong) return one.setFault(wrong);
-    const change = (design) => withPath(design, steps, value);
-    const faults = await faultsOf(change(store.design));
-    one.setFault(faults[0]?.what ?? null);
-    if (faults.length === 0) store.edit(part.label, change);
-    return undefined;
+    const faults = await judgedEdit(store, part.label, (design) => withPath(design, steps, value));
+    return one.setFault(faults[0]?.what ?? null);
   }
 
   control.addEventListener("change", keep);
   control.addEventListener("keydown", (event) => {
-    if (part.kind !== "area") event.stopPropagation();
     if (event.key !== "Escape") return;
     control.value = shown;
     one.setFault(null);

@@ -8,7 +8,7 @@ import { el, freshId } from "./element.js";
  * @property {HTMLElement} body
  * @property {HTMLElement} foot
  * @property {(title?: string) => void} open
- * @property {() => void} close
+ * @property {(focus?: () => void) => void} close
  *
  * @param {HTMLElement} root
  * @param {{title: string, class?: string, onClose?: () => void}} options
@@ -18,14 +18,17 @@ export function sheet(root, { title, class: extra = "", onClose }) {
   const heading = el("h2", { id: freshId("sheet"), text: title });
   const body = el("div", { class: "sheet-body" });
   const foot = el("div", { class: "sheet-foot" });
-  const closer = el("button", { type: "button", class: "quiet sheet-close", "aria-label": "close", text: "✕", on: { click: close } });
+  const closer = el("button", { type: "button", class: "quiet sheet-close", "aria-label": "close", text: "✕", on: { click: () => close() } });
   const dialog = el("dialog", { class: `sheet ${extra}`.trim(), "aria-labelledby": heading.id },
     el("div", { class: "sheet-head" }, heading, closer), body, foot);
   let caller = null;
+  let afterwards = null;
   dialog.addEventListener("close", () => {
     onClose?.();
     // The row that called may have been drawn anew meanwhile; then the page keeps the focus.
-    if (caller?.isConnected) caller.focus();
+    if (afterwards) afterwards();
+    else if (caller?.isConnected) caller.focus();
+    afterwards = null;
   });
   dialog.addEventListener("pointerdown", (event) => {
     if (event.target === dialog && isOutside(dialog, event)) dialog.dataset.pressedOutside = "true";
@@ -40,7 +43,9 @@ export function sheet(root, { title, class: extra = "", onClose }) {
   dialog.addEventListener("keydown", (event) => event.stopPropagation());
   root.append(dialog);
 
-  function close() {
+  /** @param {() => void} [focus] where the focus goes; left out: back to what opened the dialog */
+  function close(focus) {
+    afterwards = focus ?? null;
     dialog.close();
   }
 

@@ -1,7 +1,7 @@
 import { insertedAt, replacedAt, withStages } from "./design_edits.js";
 import { el, textButton } from "./element.js";
 import { choice, field, placeFaults, textInput } from "./field.js";
-import { faultsOf } from "./request.js";
+import { judgedEdit } from "./judged_edit.js";
 import { sheet } from "./sheet.js";
 import { STAGE_FORMS } from "./stage_forms.js";
 import { stageName } from "./stages_words.js";
@@ -26,7 +26,7 @@ export function stageEditor(root, store, kept) {
   const form = el("form", { class: "form", novalidate: true, on: { submit: keep } }, kindField.node, formula, slot, nameField.node, rest);
   window_.body.append(form);
   const keepButton = el("button", { type: "button", class: "strong", on: { click: () => form.requestSubmit() } });
-  window_.foot.append(keepButton, textButton("cancel", window_.close, { class: "quiet" }));
+  window_.foot.append(keepButton, textButton("cancel", () => window_.close(), { class: "quiet" }));
   let index = null;
   let parts = [];
 
@@ -63,14 +63,13 @@ export function stageEditor(root, store, kept) {
     if (!stage) return form.querySelector("[aria-invalid=true]")?.focus();
     const at = index ?? (store.design.compensator.stages ?? []).length;
     const change = (list) => (index === null ? insertedAt(list, at, stage) : replacedAt(list, at, stage));
-    const faults = await faultsOf(withStages(store.design, change));
+    const label = `${index === null ? "add" : "change"} ${stageName(stage)}`;
+    const faults = await judgedEdit(store, label, (design) => withStages(design, change));
     if (faults.length > 0) {
       const fields = new Map([["kind", kindField], ["name", nameField], ...parts.map((part) => [part.path, part.field])]);
       return placeFaults(fields, faults, `compensator.stages[${at}]`, rest);
     }
-    store.edit(`${index === null ? "add" : "change"} ${stageName(stage)}`, (design) => withStages(design, change));
-    window_.close();
-    kept(at);
+    window_.close(() => kept(at));
   }
 
   return {

@@ -43,6 +43,7 @@ export function stagesAdd(store, { byNumbers, added }) {
   }
 
   const line = el("div", { class: "stages-add" }, el("span", { class: "plus", "aria-hidden": "true", text: "+" }),
-    ...buttons, textButton("a stage by its numbers", byNumbers, { class: "adds" }));
+    ...buttons.flatMap((button) => [button, el("span", { class: "dot", "aria-hidden": "true", text: "·" })]),
+    textButton("a stage by its numbers", () => byNumbers(), { class: "adds" }));
   return { node: el("div", {}, line, said), clear: () => { said.textContent = ""; } };
 }

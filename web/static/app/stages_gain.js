@@ -2,7 +2,7 @@ import { withGain } from "./design_edits.js";
 import { el, setText } from "./element.js";
 import { exactNumber } from "./exact_number.js";
 import { number } from "./format.js";
-import { faultsOf } from "./request.js";
+import { judgedEdit } from "./judged_edit.js";
 import { toShown } from "./units.js";
 
 /** Tried in this order: the first that is a number on the nominal case says how stiff the loop is at rest. */
@@ -22,10 +22,8 @@ export function gainRow(store) {
     name: "gain of the compensator",
     show: (value) => number(value),
     async keep(value) {
-      const faults = await faultsOf(withGain(store.design, value));
-      if (faults.length > 0) return faults[0].what;
-      store.edit("gain", (design) => withGain(design, value));
-      return null;
+      const faults = await judgedEdit(store, "gain", (design) => withGain(design, value));
+      return faults[0]?.what ?? null;
     },
   });
   const words = el("span");

@@ -2,7 +2,7 @@ import { el, setText, textButton } from "./element.js";
 import { exactNumber } from "./exact_number.js";
 import { exact, number } from "./format.js";
 import { draggableRow } from "./reorder.js";
-import { isLead, sentenceOf, stageName } from "./stages_words.js";
+import { isLead, sentenceOf, stageName, tradeName } from "./stages_words.js";
 import { typedNumber } from "./typed_number.js";
 import { fromShown, toShown } from "./units.js";
 
@@ -37,7 +37,7 @@ export function stageRow(store, index, stage, actions, rows) {
   const called = stageName(stage);
   const awake = stage.enabled !== false;
   const parts = sentenceOf(stage).map((part) => builtPart(store, index, part, called, actions));
-  const nameSlot = el("span", { class: "stage-name" }, stage.name ? `${stage.name}, ` : "");
+  const nameSlot = el("span", { class: "stage-name" }, ownName(stage));
   const grip = el("button", { type: "button", class: "grip", "aria-label": `move ${called}: drag, or arrow keys up and down`, title: "drag to another place" });
   const act = (word, run, key, more = {}) => textButton(word, run, { "aria-label": `${word} ${called}`, data: { act: key }, ...more });
   const seldom = (word, run, key) => act(word, run, key, { class: "seldom" });
@@ -62,6 +62,11 @@ export function stageRow(store, index, stage, actions, rows) {
     node: row,
     update: (now, facts) => parts.forEach((part) => part.update(now, facts)),
   };
+}
+
+/** A name that only repeats what the trade calls the stage is not said twice. */
+function ownName(stage) {
+  return stage.name && stage.name.toLowerCase() !== tradeName(stage) ? `${stage.name}, ` : "";
 }
 
 function builtPart(store, index, part, called, actions) {
@@ -96,7 +101,6 @@ function renameIn(slot, stage, keep) {
     if (name !== null && name !== (stage.name ?? "")) keep(name);
   };
   input.addEventListener("keydown", (event) => {
-    event.stopPropagation();
     if (event.key === "Enter") close(input.value.trim());
     else if (event.key === "Escape") close(null);
   });

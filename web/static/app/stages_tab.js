@@ -1,6 +1,6 @@
 import { insertedAt, moved, removedAt, replacedAt, withField, withStages } from "./design_edits.js";
 import { el } from "./element.js";
-import { faultsOf } from "./request.js";
+import { judgedEdit } from "./judged_edit.js";
 import { stageEditor } from "./stage_editor.js";
 import { stagesAdd } from "./stages_add.js";
 import { gainRow } from "./stages_gain.js";
@@ -59,10 +59,9 @@ function stageActions(store) {
   return {
     async keep(index, field, value) {
       const change = (list) => replacedAt(list, index, { ...list[index], [field]: value });
-      const faults = await faultsOf(withStages(store.design, change));
-      if (faults.length > 0) return faults[0].what;
-      edit(`${field.replace(/_rad_s$/, "").replaceAll("_", " ")} of ${called(index)}`, change);
-      return null;
+      const label = `${field.replace(/_rad_s$/, "").replaceAll("_", " ")} of ${called(index)}`;
+      const faults = await judgedEdit(store, label, (design) => withStages(design, change));
+      return faults[0]?.what ?? null;
     },
     move(from, to) {
       edit(`move ${called(from)}`, (list) => moved(list, from, to));
