@@ -123,7 +123,7 @@ def _check(chosen: argparse.Namespace) -> int:
         raise CommandError("--curves goes with --json; for a table use export --as curves")
     from engine.design.assess import assess
     from server.design_file import read_design
-    from server.exact_json import json_text
+    from server.json_text import json_text
     from server.requirement_table import requirement_table
 
     design = read_design(chosen.file)

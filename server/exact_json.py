@@ -1,18 +1,13 @@
-"""JSON out: the same digits as every other entrance, and never a NaN."""
+"""JSON responses: the same digits as at every other entrance."""
 
 from __future__ import annotations
 
-import json
 from collections.abc import Mapping
 from typing import Any
 
 from starlette.responses import Response
 
-
-def json_text(value: Any, indent: int | None = None) -> str:
-    """One spelling for files, responses and frames: shortest exact digits, text as it is; ValueError on a NaN."""
-    separators = (",", ":") if indent is None else (",", ": ")
-    return json.dumps(value, ensure_ascii=False, allow_nan=False, indent=indent, separators=separators)
+from server.json_text import json_text
 
 
 def exact_json(

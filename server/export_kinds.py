@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from engine.design.curves_table import curves_csv
 from engine.design.document import Design
 from engine.design.transfer_function import hand_over
-from server.exact_json import json_text
+from server.json_text import json_text
 
 
 @dataclass(frozen=True)

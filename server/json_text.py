@@ -1,4 +1,4 @@
-"""JSON text in, plain values out, or the pointed reason why not. Stricter than Python's own reader."""
+"""JSON text to plain values, or the pointed reason why not, and back. Stricter than Python's own reader."""
 
 from __future__ import annotations
 
@@ -52,6 +52,12 @@ def parse_json(data: bytes | str) -> Any:
     if "\\ud" in text or "\\uD" in text:
         _refuse_half_characters(value)
     return value
+
+
+def json_text(value: Any, indent: int | None = None) -> str:
+    """One spelling for files, responses and frames: shortest exact digits, text as it is; ValueError on a NaN."""
+    separators = (",", ":") if indent is None else (",", ": ")
+    return json.dumps(value, ensure_ascii=False, allow_nan=False, indent=indent, separators=separators)
 
 
 def _decoded(data: bytes) -> str:

@@ -14,8 +14,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.errors import Fault
-from server.exact_json import json_text
 from server.faults import error_body
+from server.json_text import json_text
 
 
 def frame_of(header: Mapping[str, Any], arrays: Mapping[str, NDArray[np.float64]]) -> bytes:

@@ -9,9 +9,9 @@ from fastapi import APIRouter, Header, Request, Response
 
 from engine.design.canonical import design_sha256
 from engine.design.parse import parse_design
-from server.exact_json import exact_json, json_text
+from server.exact_json import exact_json
 from server.faults import RefusedError
-from server.json_text import parse_json
+from server.json_text import json_text, parse_json
 from server.request_body import DESIGN_BODY, body_text, described
 from server.services import Services
 from server.settings import Settings

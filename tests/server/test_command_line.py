@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import contextlib
+import io
 import json
 import os
 import re
@@ -11,6 +13,7 @@ import subprocess
 import sys
 from pathlib import Path
 from typing import Any
+from unittest import mock
 
 import pytest
 
@@ -21,14 +24,35 @@ _TIMEOUT_S = 60
 
 
 def _run(*arguments: str | Path, given: str | bytes = "", **environment: str) -> subprocess.CompletedProcess[str]:
-    """Run the command as a user would."""
+    """Run the command in this process, with streams of its own; any exception that gets out fails the test."""
+    streams = [io.TextIOWrapper(io.BytesIO(), encoding="ascii") for _ in range(2)]
+    standard_input = io.TextIOWrapper(io.BytesIO(given.encode() if isinstance(given, str) else given))
+    with (
+        contextlib.redirect_stdout(streams[0]),
+        contextlib.redirect_stderr(streams[1]),
+        mock.patch("sys.stdin", standard_input),
+        mock.patch.dict(os.environ, environment),
+    ):
+        try:
+            code: object = command_line.main([str(argument) for argument in arguments])
+        except SystemExit as ended:  # --help and --version
+            code = ended.code
+    written = []
+    for stream in streams:
+        stream.flush()
+        written.append(stream.buffer.getvalue().decode("utf-8"))
+    return subprocess.CompletedProcess(arguments, code, *written)
+
+
+def _run_outside(*arguments: str | Path, **environment: str) -> subprocess.CompletedProcess[str]:
+    """Run the command as a user does, in a process of its own."""
     done = subprocess.run(
         [sys.executable, "-m", "server", *map(str, arguments)], cwd=CLONE, capture_output=True, timeout=_TIMEOUT_S,
-        input=given.encode() if isinstance(given, str) else given, env={**os.environ, **environment},
+        env={**os.environ, **environment},
     )  # fmt: skip
     out, err = done.stdout.decode("utf-8"), done.stderr.decode("utf-8")
     assert "Traceback" not in out + err
-    return subprocess.CompletedProcess(done.args, done.returncode, out, err)
+    return subprocess.CompletedProcess(arguments, done.returncode, out, err)
 
 
 def _assert_one_line(done: subprocess.CompletedProcess[str], told: str) -> None:
@@ -114,7 +138,9 @@ def test_every_demo_can_be_checked(demo_design: dict[str, Any]) -> None:
 
 
 def test_other_encodings_of_the_terminal_do_no_harm(file: Path) -> None:
-    assert "°" in _run("check", file, PYTHONIOENCODING="ascii", PYTHONUTF8="0").stdout
+    done = _run_outside("check", file, PYTHONIOENCODING="ascii", PYTHONUTF8="0")
+    assert "°" in done.stdout
+    assert done.stdout == _run("check", file).stdout
 
 
 # --- files that are none ----------------------------------------------------------------------------------------
@@ -239,7 +265,7 @@ def test_a_port_that_is_taken_is_told_in_one_line(tmp_path: Path) -> None:
     with socket.create_server(("127.0.0.1", 0)) as taken:
         port = taken.getsockname()[1]
         for arguments in (("serve", "--port", str(port)), (f"--port={port}",)):
-            done = _run(*arguments, "--no-browser", LOOPWRIGHT_STORE=str(tmp_path / "links.sqlite"))
+            done = _run_outside(*arguments, "--no-browser", LOOPWRIGHT_STORE=str(tmp_path / "links.sqlite"))
             _assert_one_line(done, rf"port {port} is taken; choose another with --port")
 
 
