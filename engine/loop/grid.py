@@ -104,8 +104,8 @@ def _fresh_points(part: _PlantPart, compensator: Sections, reach: Reach) -> Floa
     """The points that the compensator and the reach of the loop add to the plant's own."""
     own = part.nodes.omega_rad_s
     corner_low, corner_high = float(reach.smallest.min()), float(reach.largest.max())
-    low = float(min(reach.gain_low.min(), reach.phase_low.min()))
-    high = float(max(reach.gain_high.max(), reach.phase_high.max()))
+    low = float(min(reach.gain_low.min(), reach.phase_low.min(), reach.closed_low.min()))
+    high = float(max(reach.gain_high.max(), reach.phase_high.max(), reach.closed_high.max()))
     dense_low = min(corner_low / _AROUND_CORNERS, max(low / 10.0, corner_low / 10.0**_DENSE_DECADES))
     dense_high = max(corner_high * _AROUND_CORNERS, min(high * 10.0, corner_high * 10.0**_DENSE_DECADES))
     pieces = _around_roots(compensator)

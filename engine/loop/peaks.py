@@ -93,7 +93,9 @@ def _grid_candidates(samples: Sampled, rows: FloatArray) -> Tasks:
     column = column + 1
     # The parabola through three samples (in the index, for speed) starts Newton's method close by.
     before, here, after = (rows[quantity, case, column + shift] for shift in (-1, 0, 1))
-    lean = np.clip(0.5 * (before - after) / np.minimum(before - 2.0 * here + after, -1e-300), -0.9, 0.9)
+    with np.errstate(invalid="ignore", over="ignore"):
+        lean = 0.5 * (before - after) / np.minimum(before - 2.0 * here + after, -1e-300)
+    lean = np.where(np.isfinite(lean), np.clip(lean, -0.9, 0.9), 0.0)
     left, mid, right = omega[column - 1], omega[column], omega[column + 1]
     start = mid * np.where(lean > 0, right / mid, mid / left) ** lean
     return _peak_tasks(quantity, case, left, start, right)

@@ -32,6 +32,10 @@ class Reach:
     smallest: FloatArray
     """Size of the smallest root other than 0; 1 where there is none."""
     largest: FloatArray
+    closed_low: FloatArray
+    """Beyond all roots and crossings of L the closed loop still changes down to here: K near −1 makes a slow pole."""
+    closed_high: FloatArray
+    """… and up to here: L(∞) near −1 makes a fast pole, and a small |T(0)| is left late."""
     relative_degree: FloatArray
     log_high_gain: FloatArray
     """ln|g|, L(s) → g·s^−relative_degree for s → ∞ (dead time left aside)."""
@@ -80,6 +84,11 @@ def reach_of(model: Sections) -> Reach:
         gain_high=gain_high_at,
         phase_low=smallest * _first_rules(low_sums[0::2], count + lag, _on_level(phase_zero), plain_low),
         phase_high=np.where(delayed, gain_high_at, phase_high),
+        closed_low=smallest * np.where(model.integrators == 0, _gap(model.log_gain, phase_zero), 1.0),
+        closed_high=np.maximum(
+            largest / np.where(relative_degree == 0, _gap(log_high_gain, phase_infinite), 1.0),
+            _last_bandwidth(model, relative_degree, log_high_gain),
+        ),
         smallest=smallest,
         largest=largest,
         relative_degree=relative_degree,
@@ -130,6 +139,23 @@ def _gain_limit(
     ruled = _first_rules(sums[1::2], count, (level | monotone) & (degree == 0), plain)
     clear = np.sqrt(np.abs(log_limit) / np.maximum(count, 1.0))
     return np.where((degree == 0) & ~level, np.minimum(ruled, np.maximum(clear, 1e-7)), ruled)
+
+
+def _gap(log_gain: FloatArray, phase: FloatArray) -> FloatArray:
+    """|1 + L| at an end where L is real, in 1e-9 … 1."""
+    size = np.exp(np.clip(log_gain, -1.0, 1.0))
+    return np.clip(np.where(np.cos(phase) < 0, np.abs(1.0 - size), 1.0), 1e-9, 1.0)
+
+
+def _last_bandwidth(model: Sections, relative_degree: FloatArray, log_high_gain: FloatArray) -> FloatArray:
+    """Where |L|, and |T| with it, has fallen to half of |T(0)|, on the asymptote; 0 where |T(0)| is not below 1."""
+    size = np.exp(np.clip(model.log_gain, -300.0, 300.0))
+    value = np.where(model.turn < -1.0, -size, size)
+    with np.errstate(divide="ignore"):
+        level = np.minimum(model.log_gain - np.log(np.abs(1.0 + value)), 0.0) - 0.7
+    falling = (model.integrators == 0) & (relative_degree > 0)
+    far = np.exp(_bounded((log_high_gain - level) / _nonzero(relative_degree)))
+    return np.where(falling & np.isfinite(far), far, 0.0)
 
 
 def _on_level(phase: FloatArray) -> BoolArray:
