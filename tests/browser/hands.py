@@ -63,6 +63,7 @@ def px_per_decade(page: Page, handle: Locator) -> float:
     after = value(handle)
     page.keyboard.press("Escape")
     page.mouse.up()
+    settled(page)
     return 40 / math.log10(after / before)
 
 

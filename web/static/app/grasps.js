@@ -116,7 +116,8 @@ export function gainGrasp(scene, pxPerDecade, ends, at) {
     set: (design, size) => withGainOf(design, sign() * size),
     typed: (size) => exact(sign() * size),
     // Typing may turn the sign; the lane never does.
-    read: (shown) => Math.abs(shown),
+    keep: withGainOf,
+    refuse: (shown) => (shown === 0 ? "must not be 0: the loop would be open" : null),
     at, stage: "gain",
   };
 }

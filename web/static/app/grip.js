@@ -8,7 +8,8 @@ import { set, show, svg } from "./svg.js";
 export function crossoverGrip(parent, scene, hand) {
   const place = { x: 0, y: 0 };
   const crossings = () => scene.frame.assessment.cases[0].gain_crossovers;
-  const grasp = crossoverGrasp(scene, () => crossings()[0]?.rad_s ?? 1, () => place);
+  const wanted = () => scene.store.aim?.crossover_rad_s ?? crossings()[0]?.rad_s ?? 1;
+  const grasp = crossoverGrasp(scene, wanted, () => place);
   const { node, speak } = handle(hand, grasp, { class: "crossover-grip" },
     svg("circle", { class: "glow", r: 14 }),
     svg("circle", { class: "grip-disc", r: 10 }),
@@ -20,7 +21,7 @@ export function crossoverGrip(parent, scene, hand) {
       const usable = only.length === 1 && scene.inSight(only[0].rad_s) && scene.gain.from < 0 && scene.gain.to > 0;
       show(node, usable);
       if (!usable) return;
-      place.x = scene.x.px(only[0].rad_s);
+      place.x = scene.x.px(wanted());
       place.y = scene.gain.px(0);
       set(node, { transform: `translate(${place.x.toFixed(1)} ${place.y.toFixed(1)})` });
       node.classList.toggle("is-lit", /** @type {any} */ (scene.store.ui.focusedStage) === "gain");

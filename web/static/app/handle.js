@@ -13,6 +13,8 @@
  * @property {(value: number) => import("./store.js").Aim} [aim]  where the server is to choose the gain
  * @property {(value: number) => string} [typed]  as it stands in the field when typed
  * @property {(shown: number) => number} [read]   back from the field
+ * @property {(design: any, shown: number) => any} [keep]  what a typed number does, where that is more than `set`
+ * @property {(shown: number) => string | null} [refuse]  what is wrong with a typed number
  * @property {() => {x: number, y: number}} at    where the flag belongs, px of the stage
  * @property {number | "gain" | null} stage
  *
@@ -59,8 +61,6 @@ function followPointer(/** @type {SVGElement} */ node, /** @type {Hand} */ hand,
 
   node.addEventListener("pointerdown", (event) => {
     if (event.button !== 0 || pull) return;
-    event.preventDefault();
-    node.focus({ preventScroll: true });
     node.setPointerCapture(event.pointerId);
     pull = { id: event.pointerId, x: event.clientX, y: event.clientY, start: grasp.value(), dx: 0, dy: 0 };
     store.hold(`move ${grasp.name()}`);

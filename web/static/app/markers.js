@@ -42,14 +42,15 @@ export function markers(parent, scene, hand) {
       const standing = standingPlaces(scene, corners);
       places = new Map(standing.map((place) => [place.id, place]));
       drawLeaders(standing.filter((place) => place.lifted));
-      drawStems(corners.filter((corner) => corner.kind === "oo" || corner.kind === "xx"));
-      knobs = [...drawChevrons(corners.filter((corner) => corner.kind === "notch")).values()].flatMap(({ now: { shape } }) => [
+      const tips = [...drawStems(corners.filter((corner) => corner.kind === "oo" || corner.kind === "xx")).values()].map(({ tip }) => tip.now);
+      const arms = [...drawChevrons(corners.filter((corner) => corner.kind === "notch")).values()].flatMap(({ now: { shape } }) => [
         { x: shape.x - shape.arm, y: shape.top }, { x: shape.x + shape.arm, y: shape.top }, { x: shape.x, y: shape.point },
       ]);
+      knobs = [...tips, ...arms];
       drawCorners(corners);
     },
     /** What labels keep clear of. @returns {import("./labels.js").Box[]} */
-    boxes: () => [...[...places.values()].map(({ x, y }) => boxAbout(x, y, 13)), ...knobs.map(({ x, y }) => boxAbout(x, y, 6))],
+    boxes: () => [...[...places.values()].map(({ x, y }) => boxAbout(x, y, 13)), ...knobs.map(({ x, y }) => boxAbout(x, y, 9))],
   };
 }
 
@@ -115,8 +116,8 @@ function chevrons(/** @type {SVGElement} */ parent, /** @type {import("./scene.j
     (corner) => {
       const now = { shape: shapeOf(corner) };
       const line = svg("path", { class: "chevron" });
-      const left = handle(hand, widthGrasp(scene, corner.stage, -1, () => ({ x: now.shape.x - now.shape.arm, y: now.shape.top })), { class: "arm", reach: 12 }, knob());
-      const right = handle(hand, widthGrasp(scene, corner.stage, 1, () => ({ x: now.shape.x + now.shape.arm, y: now.shape.top })), { class: "arm", reach: 12 }, knob());
+      const left = handle(hand, widthGrasp(scene, corner.stage, -1, () => ({ x: now.shape.x - now.shape.arm, y: now.shape.top })), { class: "arm", reach: 12, where: "left arm" }, knob());
+      const right = handle(hand, widthGrasp(scene, corner.stage, 1, () => ({ x: now.shape.x + now.shape.arm, y: now.shape.top })), { class: "arm", reach: 12, where: "right arm" }, knob());
       const point = handle(hand, depthGrasp(scene, corner.stage, () => ({ x: now.shape.x, y: now.shape.point })),
         { class: "point", orientation: "vertical", reach: 12 }, knob());
       return { node: svg("g", {}, line, left.node, right.node, point.node), line, left, right, point, now };

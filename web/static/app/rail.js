@@ -60,7 +60,7 @@ function laneGround(/** @type {string} */ extra) {
         full.textContent = text;
         name.append(full);
       }
-      set(note, { x: left + 10, y: lane.middle + 4 });
+      set(note, { x: right - 10, y: lane.middle + 4, "text-anchor": "end" });
     },
   };
 }
@@ -162,11 +162,14 @@ function fixedRoots(/** @type {any} */ stage) {
 }
 
 function laneNote(/** @type {Scene} */ scene, /** @type {any} */ stage, /** @type {import("./corners.js").Corner[]} */ corners) {
-  if (stage.kind === "integrator") return "        pole at zero frequency: nothing to move";
+  if (!isAwake(stage)) return "resting";
+  if (stage.kind === "integrator") return "pole at zero frequency: nothing to move";
   const hidden = corners.filter((corner) => !scene.inSight(corner.rad_s));
   if (hidden.length === 0) return "";
   const low = hidden.filter((corner) => corner.rad_s < scene.x.value(scene.x.start));
-  return low.length ? `◂ ${low.map((corner) => corner.short).join(", ")} below what is shown` : `${hidden.map((corner) => corner.short).join(", ")} above what is shown ▸`;
+  const high = hidden.filter((corner) => !low.includes(corner));
+  const named = (/** @type {any[]} */ some) => some.map((corner) => corner.short).join(", ");
+  return [low.length ? `◂ ${named(low)} below what is shown` : "", high.length ? `${named(high)} above what is shown ▸` : ""].filter(Boolean).join("   ");
 }
 
 /** Rail, ledger, markers and drawer light a stage up together. */

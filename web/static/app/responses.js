@@ -14,7 +14,7 @@ import { responseTitles } from "./response_titles.js";
 import { linearScale } from "./scales.js";
 import { zoomSurface } from "./surface.js";
 import { set, svg } from "./svg.js";
-import { fittedResponse, steady, View } from "./view.js";
+import { fittedResponse, fittedTime, steady, View } from "./view.js";
 import { zoomWords } from "./zoom_words.js";
 
 /** @param {HTMLElement} root @param {import("./store.js").Store} store */
@@ -52,12 +52,13 @@ export function responses(root, store) {
   function follow() {
     const { assessment, arrays } = /** @type {any} */ (store.lastGood);
     if (stage.frozen && state.values.length) return;
-    view.fitted = /** @type {[number, number]} */ (steadyEnd(view.fitted, wholeTime(store)));
-    const time = /** @type {[number, number]} */ (view.range);
-    const scenario = JSON.stringify([time, store.design?.scenario]);
-    const same = scenario === state.drawn;
-    state.drawn = scenario;
     const taken = stableCases(assessment);
+    const scenario = JSON.stringify(store.design?.scenario);
+    const end = fittedTime(arrays.time_s.data, [arrays.command, arrays.load], taken);
+    view.fitted = steadyEnd(state.drawn.startsWith(scenario) ? view.fitted : null, end);
+    const time = /** @type {[number, number]} */ (view.range);
+    const same = `${scenario}${time}` === state.drawn;
+    state.drawn = `${scenario}${time}`;
     state.values = RESPONSES.map((name, index) => steady(same ? state.values[index] ?? null : null,
       fittedResponse(arrays.time_s.data, arrays[name], taken, time, name === "effort" ? actuatorLimits(store.design) : [])));
   }
@@ -102,8 +103,7 @@ function wholeTime(/** @type {import("./store.js").Store} */ store) {
 
 /** The end of the time axis moves only when the responses need clearly more or less. */
 function steadyEnd(/** @type {[number, number] | null} */ old, /** @type {number} */ end) {
-  if (old && end > old[1] * 0.7 && end < old[1] * 1.02) return old;
-  return [0, end];
+  return /** @type {[number, number]} */ (old && end > old[1] * 0.6 && end < old[1] * 1.15 ? old : [0, end]);
 }
 
 function summary(/** @type {import("./store.js").Store} */ store) {

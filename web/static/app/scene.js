@@ -8,7 +8,6 @@ import { linearScale, logScale } from "./scales.js";
 import { stageName } from "./stages_words.js";
 
 export class Scene {
-  /** @type {any} */ design = null;
   /** @type {any} */ frame = null;
   /** @type {import("./geometry.js").Geometry} */ geometry;
   /** @type {import("./units.js").FrequencyUnit} */ unit = "rad/s";
@@ -21,10 +20,14 @@ export class Scene {
     this.store = store;
   }
 
+  /** Always the newest: two key presses may come between two drawings. @returns {any} */
+  get design() {
+    return this.store.design;
+  }
+
   /** @param {import("./geometry.js").Geometry} geometry
    *  @param {{x: [number, number], gain: [number, number], phase: [number, number]}} ranges */
   renew(geometry, ranges) {
-    this.design = this.store.design;
     this.frame = this.store.lastGood;
     this.unit = this.store.ui.unit;
     this.geometry = geometry;

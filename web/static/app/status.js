@@ -28,12 +28,20 @@ export function statusLine(root, store) {
     }, SPOKEN_MS);
     draw();
   });
+  let wasLost = false;
   store.addEventListener("connection", () => {
-    if (store.connection === "open" && root.dataset.tone === "trouble") store.say("The server is back; everything is up to date.");
+    if (store.connection === "open" && wasLost) store.say("The server is back; everything is up to date.");
+    wasLost = store.connection === "lost";
     draw();
   });
   store.addEventListener("frame", draw);
+  for (const type of ["design", "frame", "connection"]) store.addEventListener(type, () => showWaiting(store));
   draw();
+}
+
+/** On the root element: whether what is drawn is already that of the design. */
+function showWaiting(/** @type {import("./store.js").Store} */ store) {
+  document.documentElement.dataset.live = store.connection === "lost" ? "lost" : store.waiting ? "waiting" : "up to date";
 }
 
 function lost(/** @type {import("./store.js").Store} */ store) {

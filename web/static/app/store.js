@@ -44,7 +44,8 @@ export class Store extends EventTarget {
   #past = /** @type {Step[]} */ ([]);
   #future = /** @type {Step[]} */ ([]);
   #seq = 0;
-  #seqOfAim = 0;
+  /** The crossover that was asked for, until the server has answered with its gain. @type {Aim | null} */
+  aim = null;
   #send = /** @type {(request: {seq: number, design: Design, aim?: Aim}) => void} */ (() => {});
 
   // ---- changing the design -------------------------------------------------------------------------
@@ -93,7 +94,8 @@ export class Store extends EventTarget {
     const held = this.holding;
     if (!held) return;
     this.holding = null;
-    if (held.design !== this.design) this.#record(held.label, held.design);
+    // A gain that the server still has to choose is part of the step.
+    if (held.design !== this.design || this.aim) this.#record(held.label, held.design);
     this.#tell("holding", { held: false, label: held.label });
   }
 
@@ -102,7 +104,7 @@ export class Store extends EventTarget {
     const held = this.holding;
     if (!held) return;
     this.holding = null;
-    if (held.design !== this.design) this.#show(held.design);
+    if (held.design !== this.design || this.aim) this.#show(held.design);
     this.#tell("holding", { held: false, label: held.label });
   }
 
@@ -185,7 +187,7 @@ export class Store extends EventTarget {
   /** Ask (again) for the frame of the design as it stands. @param {Aim} [aim] */
   ask(aim) {
     this.#seq += 1;
-    this.#seqOfAim = aim ? this.#seq : 0;
+    this.aim = aim ?? null;
     this.#send({ seq: this.#seq, design: /** @type {Design} */ (this.design), aim });
   }
 
@@ -198,14 +200,14 @@ export class Store extends EventTarget {
     if (frame.seq > this.#seq || (this.frame && frame.seq < this.frame.seq)) return;
     this.frame = frame;
     if (frame.ok) this.lastGood = frame;
-    if (frame.ok && typeof frame.gain === "number" && frame.seq === this.#seqOfAim) this.#takeGain(frame.gain);
+    if (this.aim && frame.seq === this.#seq) this.#takeGain(frame);
     this.#tell("frame", frame);
   }
 
-  #takeGain(/** @type {number} */ gain) {
+  #takeGain(/** @type {Frame} */ { ok, gain }) {
     const design = /** @type {Design} */ (this.design);
-    this.#seqOfAim = 0;
-    if (design.compensator.gain === gain) return;
+    this.aim = null;
+    if (!ok || gain === undefined || design.compensator.gain === gain) return;
     this.design = { ...design, compensator: { ...design.compensator, gain } };
     this.#tell("design", { settled: true });
   }

@@ -26,11 +26,12 @@ export function typingField(stage, store) {
     box.addEventListener("submit", (event) => {
       event.preventDefault();
       const number = typedNumber(input.value);
-      const wrong = numberFault(input.value, number) ?? rangeFault(grasp, number);
+      const wrong = numberFault(input.value, number) ?? (grasp.refuse ?? notPositive(grasp))(number);
       fault.textContent = wrong ?? "";
       if (wrong) return;
       const value = grasp.read ? grasp.read(number) : number;
-      store.edit(`set ${grasp.name()}`, (design) => grasp.set(design, value), grasp.aim ? { aim: grasp.aim(value) } : {});
+      const keep = grasp.keep ?? grasp.set;
+      store.edit(`set ${grasp.name()}`, (design) => keep(design, value), grasp.aim ? { aim: grasp.aim(value) } : {});
       close();
     });
     box.addEventListener("keydown", (event) => {
@@ -45,7 +46,10 @@ export function typingField(stage, store) {
 }
 
 /** Corners, dampings and gains are positive; only a depth may be 0. */
-function rangeFault(/** @type {import("./handle.js").Grasp} */ grasp, /** @type {number} */ number) {
-  if (grasp.ends()[0] === 0 ? number >= 0 : number > 0) return null;
-  return `must be greater than 0, is ${exact(number)}`;
+function notPositive(/** @type {import("./handle.js").Grasp} */ grasp) {
+  const mayBeZero = grasp.ends()[0] === 0;
+  return (/** @type {number} */ number) => {
+    if (mayBeZero ? number >= 0 : number > 0) return null;
+    return `must be ${mayBeZero ? "0 or more" : "greater than 0"}, is ${exact(number)}`;
+  };
 }

@@ -2,7 +2,6 @@
 
 import { bandOf, curveOf, extent } from "./envelope.js";
 import { cornersOf } from "./corners.js";
-import { niceStep } from "./scales.js";
 
 const DEEPEST_BACK = 30;
 
@@ -49,7 +48,7 @@ export function fittedFrequencies(design, assessment, omega_rad_s) {
   const first = omega_rad_s[0];
   const last = omega_rad_s[omega_rad_s.length - 1];
   if (points.length === 0) return [Math.log10(first), Math.log10(last)];
-  let low = Math.log10(Math.min(...points)) - 0.85;
+  let low = Math.log10(Math.min(...points)) - 0.7;
   let high = Math.log10(Math.max(...points)) + 0.55;
   const missing = 2.6 - (high - low);
   if (missing > 0) {
@@ -129,9 +128,27 @@ export function fittedResponse(time_s, array, taken, range, also = []) {
     if (value > most && value < most + span) most = value;
     if (value < least && value > least - span) least = value;
   }
-  const step = niceStep((most - least) / 4 || 0.25);
-  const room = 0.04 * (most - least);
-  return [least < 0 ? Math.floor((least - room) / step) * step : 0, most > 0 ? Math.ceil((most + room) / step) * step : 0];
+  const room = 0.07 * (most - least || 1);
+  const matters = (/** @type {number} */ value) => Math.abs(value) > 0.015 * (most - least);
+  return [matters(least) ? least - room : 0, matters(most) || least === 0 ? most + room : 0];
+}
+
+/** How much of the time axis is worth showing: until every stable response has come to rest, and a little more.
+ *  @param {Float32Array} time_s @param {any[]} arrays responses that come to rest @param {boolean[]} taken */
+export function fittedTime(time_s, arrays, taken) {
+  const whole = time_s[time_s.length - 1];
+  const rests = arrays.flatMap((array) => taken.map((counts, index) => (counts ? restOf(time_s, curveOf(array, index)) : 0)));
+  return Math.min(whole, Math.max(whole / 50, 1.25 * Math.max(...rests)));
+}
+
+/** Last time at which a curve is 3 % of its own span away from where it ends. */
+function restOf(/** @type {Float32Array} */ time_s, /** @type {Float32Array} */ ys) {
+  const [low, high] = extent(time_s, [ys], -Infinity, Infinity);
+  const end = ys[ys.length - 1];
+  const near = 0.03 * (high - low);
+  let at = ys.length - 1;
+  while (at > 0 && Math.abs(ys[at] - end) <= near) at -= 1;
+  return end === end ? time_s[at] : time_s[time_s.length - 1];
 }
 
 /** The old range while the new one would change it little: axes that jump at every release tire the eye.
