@@ -1,0 +1,66 @@
+"""The instants at which responses are shown, the same for all cases."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.model.factored import ComplexArray, FloatArray
+
+# A geometric part shows what the fastest modes do, which a uniform one alone would miss; the uniform part is a coarse
+# comb times a fine one, so that its exponentials are products of few.
+GEOMETRIC = 112
+COARSE, FINE = 18, 16
+EARLIEST = 1e-7
+STEPS = np.array([1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0, 10.0])
+
+
+@dataclass(frozen=True, eq=False)
+class TimeGrid:
+    """0, a geometric and a uniform sequence up to the horizon, merged in order."""
+
+    time_s: FloatArray
+    """(n,) increasing, from 0 (which stands for the instant just after the step)."""
+    order: NDArray[np.int64]
+    """(n,) positions that put [geometric, uniform] in order."""
+    geometric_s: FloatArray
+    coarse_s: FloatArray
+    fine_s: FloatArray
+
+    def basis(self, exponents: ComplexArray) -> ComplexArray:
+        """(c, m, n) e^{exponent·time}; growth is cut off at e^500, far beyond what is shown."""
+        geometric = _exponential(exponents, self.geometric_s)
+        coarse, fine = _exponential(exponents, self.coarse_s), _exponential(exponents, self.fine_s)
+        uniform = coarse[:, :, :, None] * fine[:, :, None, :]
+        flat = uniform.reshape(*exponents.shape, len(self.coarse_s) * len(self.fine_s))
+        merged: ComplexArray = np.concatenate([geometric, flat], axis=2)[:, :, self.order]
+        return merged
+
+
+def _exponential(exponents: ComplexArray, time_s: FloatArray) -> ComplexArray:
+    power = exponents[:, :, None] * time_s
+    if np.any(power.real > 250.0):
+        power = np.minimum(power.real, 250.0) + 1j * power.imag
+    raised: ComplexArray = np.exp(power)
+    return raised
+
+
+def time_grid(horizon_s: float, earliest_s: float) -> TimeGrid:
+    """About 400 instants from 0 to the horizon [s]; the geometric part begins at `earliest_s`."""
+    first = min(max(earliest_s, EARLIEST * horizon_s), 0.01 * horizon_s)
+    step = horizon_s / (COARSE * FINE - 1)
+    geometric = np.geomspace(first, horizon_s - 0.5 * step, GEOMETRIC)
+    coarse: FloatArray = np.arange(float(COARSE)) * (FINE * step)
+    fine: FloatArray = np.arange(float(FINE)) * step
+    uniform = (coarse[:, None] + fine).ravel()
+    joined = np.concatenate([geometric, uniform])
+    order = np.argsort(joined, kind="stable").astype(np.int64)
+    return TimeGrid(joined[order], order, geometric, coarse, fine)
+
+
+def round_horizon(horizon_s: float) -> float:
+    """The next round number at or above: a horizon that crept with every move would make the axis restless."""
+    decade = 10.0 ** np.floor(np.log10(horizon_s))
+    return float(decade * STEPS[np.searchsorted(STEPS, horizon_s / decade * (1.0 - 1e-9))])
