@@ -47,6 +47,8 @@ export function sheet(root, { title, class: extra = "", onClose }) {
   function close(focus) {
     afterwards = focus ?? null;
     dialog.close();
+    // Nothing inside keeps the focus until the next paint: keys belong to the page at once.
+    if (dialog.contains(document.activeElement)) document.activeElement.blur();
   }
 
   return {
