@@ -180,6 +180,7 @@ def test_cases_are_copied_made_nominal_and_removed(open_design: Open, bench_desi
     expect(_case(page, "loaded")).to_contain_text("nominal")
     _case(page, "worn belt").get_by_role("button", name="copy worn belt").click()
     page.get_by_role("dialog").get_by_role("button", name="add case").click()
+    expect(_case(page, "worn belt, copy")).to_be_visible()
     assert [one["name"] for one in saved_design(page)["plant_cases"]] == [
         "loaded",
         "empty",
