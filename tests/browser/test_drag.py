@@ -171,7 +171,8 @@ def test_a_handle_is_at_least_24_px_wide(open_design: Open, shapes_design: dict[
     page = open_design(shapes_design)
     for one in page.locator("#charts .handle:not(.bar-handle)").all():
         box = one.bounding_box()
-        assert box and min(box["width"], box["height"]) >= 24, one.get_attribute("aria-label")
+        assert box
+        assert min(box["width"], box["height"]) >= 24, one.get_attribute("aria-label")
 
 
 def test_the_settled_drawing_is_the_last_state(open_design: Open, bench_design: dict[str, Any]) -> None:
@@ -203,12 +204,12 @@ def test_the_settled_drawing_is_the_last_state(open_design: Open, bench_design: 
 def test_axes_stand_still_while_held(open_design: Open, bench_design: dict[str, Any]) -> None:
     page = open_design(bench_design)
     labels = page.locator("#charts .figure .ytick text, #responses .figure .ytick text")
-    before = labels.all_inner_texts()
+    before = labels.all_text_contents()
     assert len(before) > 10
     x, y = take(page, marker(page, "gain"))
     page.mouse.move(x + 120, y, steps=8)
     page.wait_for_timeout(150)
-    assert labels.all_inner_texts() == before
+    assert labels.all_text_contents() == before
     page.mouse.up()
 
 
@@ -230,7 +231,9 @@ def test_touch_moves_a_marker(visit: Callable[..., Any], bench_design: dict[str,
     assert value(zero) > 4.5
 
 
-def test_resting_and_fixed_stages_are_shown_but_not_on_the_curve(open_design: Open, shapes_design: dict[str, Any]) -> None:
+def test_resting_and_fixed_stages_are_shown_but_not_on_the_curve(
+    open_design: Open, shapes_design: dict[str, Any]
+) -> None:
     page = open_design(shapes_design)
     lanes = page.locator("#charts .lane-group")
     expect(lanes).to_have_count(6)

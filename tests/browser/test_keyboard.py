@@ -52,7 +52,8 @@ def test_a_run_of_keys_is_one_step_of_the_history(open_design: Open, bench_desig
         page.keyboard.press("ArrowLeft")
     expect(page.locator("#charts .stage")).to_contain_class("is-held")
     settled(page)
-    assert saved_design(page)["compensator"]["stages"][0]["zero_rad_s"] == pytest.approx(4.0 * 10 ** (-5 / 40), rel=1e-5)
+    moved = saved_design(page)["compensator"]["stages"][0]["zero_rad_s"]
+    assert moved == pytest.approx(4.0 * 10 ** (-5 / 40), rel=1e-5)
     page.keyboard.press("Control+z")
     assert saved_design(page) == bench_design
 
@@ -132,7 +133,9 @@ def test_the_crossover_is_typed(open_design: Open, bench_design: dict[str, Any])
     assert told["cases"][0]["gain_crossovers"][0]["rad_s"] == pytest.approx(12, rel=1e-9)
 
 
-def test_every_handle_is_a_named_slider_with_its_value_in_words(open_design: Open, bench_design: dict[str, Any]) -> None:
+def test_every_handle_is_a_named_slider_with_its_value_in_words(
+    open_design: Open, bench_design: dict[str, Any]
+) -> None:
     page = open_design(bench_design)
     handles = page.locator("#charts .handle").all()
     assert len(handles) >= 8

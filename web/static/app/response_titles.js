@@ -56,7 +56,7 @@ function commandTitle(/** @type {import("./store.js").Store} */ store) {
 }
 
 function setShape(/** @type {import("./store.js").Store} */ store, /** @type {string} */ shape) {
-  store.edit(`command: ${shape}`, (design) => {
+  store.edit(`command by a ${shape}`, (design) => {
     if ((design.scenario?.command?.shape ?? "step") === shape) return design;
     return { ...design, scenario: { ...design.scenario, command: { ...design.scenario?.command, shape } } };
   });
