@@ -44,9 +44,8 @@ def unstable_poles_by_encirclement(loop: Loop) -> int:
     assert all(mp.re(p) != 0 or p == 0 for p in part.poles)
     axis = Axis(loop)
     start, end = _start_rad_s(loop), _end_rad_s(loop)
-    turn = _turn_at_origin(loop, axis, start) + _turn_along(axis, start, end) - _principal(axis, end)
-    # On the closing arc |L| < 1 (or it is wholly inside |L∞| < 1): 1 + L returns by its principal argument to the
-    # real axis, so that term is subtracted. Twice the upper half, clockwise counted: Z − P = −2·turn/2π.
+    turn = _turn_at_origin(loop, axis, start) + _turn_along(axis, start, end) - _turn_of_arc(loop, axis, end)
+    # Twice the upper half, clockwise counted: Z − P = −2·turn/2π.
     open_loop = sum(1 for p in part.poles if mp.re(p) > 0)
     count = open_loop - turn / np.pi
     whole = round(count)
@@ -64,19 +63,23 @@ def _start_rad_s(loop: Loop) -> float:
 
 
 def _end_rad_s(loop: Loop) -> float:
-    """Frequency beyond which, on the axis and on the arc, |L| < 1; for a biproper loop |L∞| < 1 is required."""
+    """Frequency beyond which L on the axis and on the arc is below 1, or next to L∞ where there is no dead time."""
     sizes = [float(abs(r)) for r in loop.rational.zeros + loop.rational.poles if r != 0]
     end = 1e3 * max(sizes, default=1.0)
     if loop.relative_degree == 0:
-        assert abs(loop.rational.gain) < 1, "with |L∞| >= 1 there are endlessly many unstable poles"
+        if loop.dead_time_s and abs(loop.rational.gain) >= 1:
+            raise ArithmeticError("with dead time and |L∞| >= 1 there are endlessly many unstable poles")
         return end * 1e3
     while abs(loop.rational.at(mpc(0, end))) > 1e-2:
         end *= 2
     return end
 
 
-def _principal(axis: Axis, omega: float) -> float:
-    return float(np.angle(1 + axis.value(np.array([omega]))[0]))
+def _turn_of_arc(loop: Loop, axis: Axis, omega: float) -> float:
+    """Turn of 1 + L from the real axis, along the closing arc, to jω: by its principal argument where |L| < 1."""
+    there = 1 + axis.value(np.array([omega]))[0]
+    still = loop.relative_degree == 0 and not loop.dead_time_s
+    return float(np.angle(there / (1 + float(loop.rational.gain)))) if still else float(np.angle(there))
 
 
 def _turn_at_origin(loop: Loop, axis: Axis, start: float) -> float:
@@ -98,6 +101,8 @@ def _turn_along(axis: Axis, start: float, end: float) -> float:
     for _ in range(80):
         if not len(a):
             return total
+        if len(a) > 60_000:
+            break
         box = axis.enclose(a, b)
         extent = (box.high - box.low) + box.high * np.minimum(box.greatest_angle - box.least_angle, np.pi)
         near, far = 1 + axis.value(a), 1 + axis.value(b)

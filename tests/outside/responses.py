@@ -63,7 +63,7 @@ class Modal:
             life = float(mp.log(max(abs(r) / largest, mpf("1e-9")) * mpf(10) ** 12) / -mp.re(p))
             step = float(2 * mp.pi / abs(p)) / 24
             count = int(life / step) + 2
-            if count > 2_000_000:
+            if count > 300_000:
                 raise ArithmeticError("response too long to sample")
             pieces.append(np.arange(count) * step)
             pieces.append(np.geomspace(step * 1e-3, life, 200))
