@@ -8,7 +8,8 @@ from dataclasses import dataclass
 from functools import lru_cache
 
 from engine.loop.closed_loop_roots import ClosedLoopRoots, closed_loop_roots
-from engine.loop.crossings import LISTED_AT_MOST, Crossings, Found, find_crossings
+from engine.loop.crossing_polish import Crossings
+from engine.loop.crossings import LISTED_AT_MOST, Found, find_crossings
 from engine.loop.grid import Sampled, sampled
 from engine.loop.loop_set import LoopSet
 from engine.loop.margins import (

@@ -38,7 +38,8 @@ def gain_and_phase(model: Sections, omega_rad_s: FloatArray) -> tuple[FloatArray
         real *= real
         imaginary *= imaginary
         real += imaginary
-        with np.errstate(divide="ignore"):
+        # At an undamped root ±inf is right; where a zero covers it, L has no value there (nan).
+        with np.errstate(divide="ignore", invalid="ignore"):
             gain = gain + 0.5 * _sum(model.pair_weight, np.log(real))
     return gain, phase
 

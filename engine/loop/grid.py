@@ -13,7 +13,7 @@ from engine.loop.gain_phase import gain_and_phase
 from engine.loop.loop_set import LoopSet
 from engine.loop.reach import Reach, reach_of
 from engine.loop.sections import Sections, in_series, sections_of
-from engine.loop.slope_bounds import gain_slope_bounds, phase_slope_bounds, undamped_jumps
+from engine.loop.slope_bounds import UNDAMPED, gain_slope_bounds, phase_slope_bounds, undamped_jumps
 from engine.model.factored import Factored, FloatArray
 
 _PER_DECADE = 56
@@ -61,13 +61,15 @@ class _PlantPart:
     sections: Sections
     nodes: Nodes
     """Slopes and jumps have n+1 columns: with the interval below the first node and the one above the last."""
+    undamped: tuple[float, ...]
+    """Natural frequencies of undamped pairs of plants and compensator: no node may stand on one [rad/s]."""
 
 
 def sampled(loops: LoopSet) -> Sampled:
     """The loop set on a grid: a lattice over all corners, more points at each corner and around every lightly
     damped root, and as far out as `reach` says a crossing can lie."""
-    part = _plant_part(loops.plants)
     compensator = sections_of([loops.compensator])
+    part = _plant_part(loops.plants, _undamped(compensator))
     loop = in_series(compensator, part.sections)
     reach = reach_of(loop)
     fresh = _fresh_points(part, compensator, reach)
@@ -75,14 +77,16 @@ def sampled(loops: LoopSet) -> Sampled:
 
 
 @lru_cache(maxsize=16)
-def _plant_part(plants: tuple[Factored, ...]) -> _PlantPart:
+def _plant_part(plants: tuple[Factored, ...], avoided: tuple[float, ...]) -> _PlantPart:
     # Models hash by identity: a drag step that leaves the plants alone finds them here.
     sections = sections_of(plants)
+    undamped = (*avoided, *_undamped(sections))
     size = np.abs(sections.root)[sections.root_weight != 0]
     low, high = (float(size.min()), float(size.max())) if len(size) else (1.0, 1.0)
     omega = np.unique(
         np.concatenate([_lattice(low / _AROUND_CORNERS, high * _AROUND_CORNERS, 1), *_around_roots(sections)])
     )
+    omega = _clear_of(omega, undamped)
     spread = sections.spread()
     gain, phase = gain_and_phase(spread, np.broadcast_to(omega, (len(plants), len(omega))))
     guarded = np.concatenate([[low * 1e-35], omega, [high * 1e35]])
@@ -97,6 +101,7 @@ def _plant_part(plants: tuple[Factored, ...]) -> _PlantPart:
             phase_slope_bounds(spread, guarded),
             undamped_jumps(spread, guarded),
         ),
+        undamped,
     )
 
 
@@ -117,7 +122,7 @@ def _fresh_points(part: _PlantPart, compensator: Sections, reach: Reach) -> Floa
         pieces.append(_lattice(low / 2.0, dense_low, _SPARSE))
     if high > dense_high:
         pieces.append(_lattice(dense_high, high * 2.0, _SPARSE))
-    return np.unique(np.concatenate(pieces)) if pieces else np.empty(0)
+    return _clear_of(np.unique(np.concatenate(pieces)), part.undamped) if pieces else np.empty(0)
 
 
 def _merged(part: _PlantPart, compensator: Sections, fresh: FloatArray) -> tuple[Nodes, FloatArray]:
@@ -156,6 +161,19 @@ def _merged(part: _PlantPart, compensator: Sections, fresh: FloatArray) -> tuple
     )
 
 
+def _undamped(model: Sections) -> tuple[float, ...]:
+    natural = np.hypot(model.decay, model.swing)
+    chosen = natural[(model.pair_weight != 0) & (np.abs(model.decay) <= UNDAMPED * natural)]
+    return tuple(sorted(set(chosen.tolist())))
+
+
+def _clear_of(omega: FloatArray, undamped: tuple[float, ...]) -> FloatArray:
+    """The frequencies without those that stand on an undamped pair, where L is infinite or 0."""
+    for natural in undamped:
+        omega = omega[np.abs(omega - natural) > 0.9 * _FINEST * natural]
+    return omega
+
+
 def _lattice(low: float, high: float, step: int) -> FloatArray:
     first = math.floor(math.log10(low) * _PER_DECADE / step)
     last = math.ceil(math.log10(high) * _PER_DECADE / step)
@@ -170,7 +188,7 @@ def _around_roots(model: Sections) -> list[FloatArray]:
         decay, swing = abs(float(model.decay[index])), float(model.swing[index])
         natural = math.hypot(decay, swing)
         start = max(0.5 * decay / natural, _FINEST)
-        pieces.append(np.array([natural]) if decay > 1e-12 * natural else np.empty(0))
+        pieces.append(np.array([natural]) if decay > UNDAMPED * natural else np.empty(0))
         if start < _COARSEST:
             per_side = min(math.ceil(math.log2(_COARSEST / start)), 10)
             steps = start * (_COARSEST / start) ** (np.arange(per_side + 1) / per_side)

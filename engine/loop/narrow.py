@@ -29,7 +29,7 @@ def narrow_places(
     omega = samples.nodes.omega_rad_s
     size = np.abs(roots.roots)
     with np.errstate(invalid="ignore"):
-        light = (roots.roots.imag > 0) & (np.abs(roots.roots.real) < 0.05 * size)
+        light = (roots.roots.imag > 0) & (np.abs(roots.roots.real) < 0.05 * size) & (roots.roots.real != 0)
     case, column = np.nonzero(light)
     cases, places = [case], [roots.roots.imag[case, column]]
     if not roots.complete.all():

@@ -13,8 +13,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from engine.loop.closed_loop_roots import ClosedLoopRoots
-from engine.loop.crossings import TURN, Found
+from engine.loop.crossings import Found
 from engine.loop.grid import Sampled
+from engine.loop.isolation import TURN
 from engine.loop.sections import BoolArray, IntArray
 from engine.model.factored import FloatArray
 

@@ -1,0 +1,233 @@
+"""Intervals that hold one crossing each, and the proof that no others do.
+
+Between two neighbouring frequencies the slope is bounded factor by factor (`slope_bounds`). An interval is settled
+when the bound makes the curve monotone there (then the ends decide) or when the cone that the slopes open from both
+ends leaves no room for the level. Every other interval is split. What is left at rounding level is a touching.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import Literal, TypeAlias
+
+import numpy as np
+
+from engine.loop.gain_phase import gain_and_phase
+from engine.loop.sections import BoolArray, IntArray, Sections
+from engine.loop.slope_bounds import gain_slope_bounds, phase_slope_bounds
+from engine.model.factored import FloatArray
+
+Kind: TypeAlias = Literal["gain", "phase"]
+
+TURN = 2.0 * math.pi
+_PIECES = 4
+_ROUNDS = 40
+
+
+@dataclass(frozen=True, eq=False)
+class Brackets:
+    """Intervals with exactly one crossing of `level` (left < right), or touching points (left == right)."""
+
+    case: IntArray
+    left: FloatArray
+    right: FloatArray
+    level: FloatArray
+
+    @staticmethod
+    def joined(parts: list[Brackets]) -> Brackets:
+        return Brackets(
+            np.concatenate([part.case for part in parts]),
+            np.concatenate([part.left for part in parts]),
+            np.concatenate([part.right for part in parts]),
+            np.concatenate([part.level for part in parts]),
+        )
+
+
+@dataclass(frozen=True, eq=False)
+class _Intervals:
+    """Intervals (p,) of the curve y (level 0 for the gain, every integer for the phase), still to be settled."""
+
+    case: IntArray
+    left: FloatArray
+    right: FloatArray
+    y_left: FloatArray
+    y_right: FloatArray
+    low: FloatArray
+    high: FloatArray
+
+    def where(self, chosen: BoolArray) -> _Intervals:
+        return _Intervals(
+            self.case[chosen],
+            self.left[chosen],
+            self.right[chosen],
+            self.y_left[chosen],
+            self.y_right[chosen],
+            self.low[chosen],
+            self.high[chosen],
+        )
+
+
+def turns(phase: FloatArray) -> FloatArray:
+    """Phase in turns from −180°: an integer is a crossing."""
+    return (phase + math.pi) / TURN
+
+
+def isolated(
+    loop: Sections,
+    omega: FloatArray,
+    y: FloatArray,
+    slopes: tuple[FloatArray, FloatArray],
+    wanted: BoolArray,
+    jump: BoolArray,
+    kind: Kind,
+) -> tuple[Brackets, BoolArray]:
+    noise = noise_of(loop, kind)
+    low, high = slopes
+    y_left, y_right = y[:, :-1], y[:, 1:]
+    step = np.log(omega[1:] / omega[:-1])
+    bottom, top = _cone(y_left, y_right, low, high, step)
+    open_ = wanted & _holds_level(bottom, top, kind)
+    flat = np.zeros(y.shape[0], bool)
+    if not open_.any():
+        return Brackets.joined([no_brackets()]), flat
+    case, column = np.nonzero(open_)
+    todo = _Intervals(
+        case,
+        omega[column],
+        omega[column + 1],
+        y_left[case, column],
+        y_right[case, column],
+        # The passage of an undamped pair is no place for a hidden pair of crossings: let the ends decide.
+        np.where(jump[case, column], 0.0, low[case, column]),
+        np.where(jump[case, column], 0.0, high[case, column]),
+    )
+    return _settled(loop, todo, noise, kind, flat)
+
+
+def _settled(
+    loop: Sections, todo: _Intervals, noise: FloatArray, kind: Kind, flat: BoolArray
+) -> tuple[Brackets, BoolArray]:
+    """Split the intervals until each is settled."""
+    found = [no_brackets()]
+    for _ in range(_ROUNDS):
+        step = np.log(todo.right / todo.left)
+        tiny = noise[todo.case]
+        travel = np.maximum(np.abs(todo.low), np.abs(todo.high)) * step
+        still = _on_level(todo, tiny, kind) & (travel <= tiny)
+        resting = still & ((step > 1e-4) | (todo.low == todo.high))
+        flat[todo.case[resting]] = True
+        found.append(_touching_nodes(todo.where(~resting), noise, kind))
+        monotone = (todo.low >= 0) | (todo.high <= 0)
+        found.append(_brackets_of(todo.where(monotone), kind))
+        bottom, top = _cone(todo.y_left, todo.y_right, todo.low, todo.high, step)
+        rest = ~monotone & _holds_level(bottom, top, kind)
+        todo = todo.where(rest & ~still & (step > 1e-15))
+        if not len(todo.case):
+            break
+        todo = _without_flat(_split(loop, todo, kind), noise, kind, flat)
+    result = Brackets.joined(found)
+    # Where the curve rests on the level, its single nodes are no touching points.
+    single = (result.left < result.right) | ~flat[result.case]
+    return Brackets(result.case[single], result.left[single], result.right[single], result.level[single]), flat
+
+
+def _without_flat(pieces: _Intervals, noise: FloatArray, kind: Kind, flat: BoolArray) -> _Intervals:
+    """Drop whole splits that lie on the level within rounding at every node: the curve rests on it there."""
+    on = _on_level(pieces, noise[pieces.case], kind)
+    whole = on.reshape(-1, _PIECES).all(axis=1) & (pieces.right[::_PIECES] > pieces.left[::_PIECES] * 1.0005)
+    if not whole.any():
+        return pieces
+    flat[pieces.case[::_PIECES][whole]] = True
+    return pieces.where(~np.repeat(whole, _PIECES))
+
+
+def _cone(
+    y_left: FloatArray, y_right: FloatArray, low: FloatArray, high: FloatArray, step: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Least and greatest value that the slope bounds allow between the ends."""
+    spread = np.maximum(high - low, 1e-300)
+    change = y_right - y_left
+    falling = np.clip((high * step - change) / spread, 0.0, step)
+    rising = np.clip((change - low * step) / spread, 0.0, step)
+    bottom = np.minimum(np.minimum(y_left, y_right), y_left + low * falling)
+    top = np.maximum(np.maximum(y_left, y_right), y_left + high * rising)
+    rises, falls = low >= 0, high <= 0
+    return np.where(rises | falls, np.minimum(y_left, y_right), bottom), np.where(
+        rises | falls, np.maximum(y_left, y_right), top
+    )
+
+
+def _holds_level(bottom: FloatArray, top: FloatArray, kind: Kind) -> BoolArray:
+    if kind == "gain":
+        return (bottom <= 0) & (top >= 0)
+    return np.ceil(bottom) <= top
+
+
+def _on_level(part: _Intervals, tiny: FloatArray, kind: Kind) -> BoolArray:
+    return (_off_level(part.y_left, kind) <= tiny) & (_off_level(part.y_right, kind) <= tiny)
+
+
+def _off_level(y: FloatArray, kind: Kind) -> FloatArray:
+    return np.abs(y) if kind == "gain" else np.abs(y - np.rint(y))
+
+
+def noise_of(loop: Sections, kind: Kind) -> FloatArray:
+    """(c,) size of rounding in y: some ulps per factor."""
+    factors = np.sum(np.abs(loop.root_weight), axis=0) + np.abs(loop.integrators) + 1.0
+    ulps: FloatArray = 16.0 * float(np.finfo(float).eps) * factors
+    return ulps * (1.0 + np.abs(loop.log_gain)) if kind == "gain" else ulps
+
+
+def _brackets_of(part: _Intervals, kind: Kind) -> Brackets:
+    """One bracket per level between the ends of intervals in which the curve is monotone."""
+    if kind == "gain":
+        below_left, below_right = part.y_left < 0, part.y_right < 0
+        chosen = below_left != below_right
+        return Brackets(part.case[chosen], part.left[chosen], part.right[chosen], np.zeros(np.count_nonzero(chosen)))
+    first, last = np.floor(part.y_left), np.floor(part.y_right)
+    count = np.abs(last - first).astype(np.int64)
+    if not count.any():
+        return no_brackets()
+    index = np.repeat(np.arange(len(count)), count)
+    offset = np.arange(len(index)) - np.repeat(np.cumsum(count) - count, count)
+    level = np.minimum(first, last)[index] + 1.0 + offset
+    return Brackets(part.case[index], part.left[index], part.right[index], level)
+
+
+def _touching_nodes(part: _Intervals, noise: FloatArray, kind: Kind) -> Brackets:
+    """Ends that lie on a level within rounding; those beside a true crossing are dropped later."""
+    tiny = noise[part.case]
+    left = _off_level(part.y_left, kind) <= tiny
+    right = _off_level(part.y_right, kind) <= tiny
+    if not (left.any() or right.any()):
+        return no_brackets()
+    at = np.concatenate([part.left[left], part.right[right]])
+    y = np.concatenate([part.y_left[left], part.y_right[right]])
+    return Brackets(np.concatenate([part.case[left], part.case[right]]), at, at, np.rint(y))
+
+
+def _split(loop: Sections, part: _Intervals, kind: Kind) -> _Intervals:
+    share = np.arange(1, _PIECES) / _PIECES
+    inner = part.left[:, None] * np.exp(np.log(part.right / part.left)[:, None] * share)
+    nodes = np.concatenate([part.left[:, None], inner, part.right[:, None]], axis=1)
+    own = loop.at(part.case).spread()
+    gain, phase = gain_and_phase(own, inner)
+    y = gain if kind == "gain" else turns(phase)
+    y = np.concatenate([part.y_left[:, None], y, part.y_right[:, None]], axis=1)
+    low, high = (gain_slope_bounds if kind == "gain" else phase_slope_bounds)(own, nodes)
+    if kind == "phase":
+        low, high = low / TURN, high / TURN
+    return _Intervals(
+        np.repeat(part.case, _PIECES),
+        nodes[:, :-1].ravel(),
+        nodes[:, 1:].ravel(),
+        y[:, :-1].ravel(),
+        y[:, 1:].ravel(),
+        low.ravel(),
+        high.ravel(),
+    )
+
+
+def no_brackets() -> Brackets:
+    return Brackets(np.empty(0, np.int64), np.empty(0), np.empty(0), np.empty(0))
