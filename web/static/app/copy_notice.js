@@ -7,12 +7,13 @@ import { el } from "./element.js";
  * @returns {HTMLElement}
  */
 export function copyNotice(store) {
-  const node = el("div", { class: "copy-notice", hidden: true },
-    el("p", { text: "Opened from a shared link. This is your own copy: changes stay with you, the shared design stays as it is." }),
-    el("button", { type: "button", class: "quiet", "aria-label": "close this notice", text: "✕", on: { click: () => { node.hidden = true; } } }));
+  const text = el("p", { text: "Opened from a shared link. This is your own copy: changes stay with you, the shared design stays as it is." });
+  const close = el("button", { type: "button", class: "quiet", "aria-label": "close this notice", text: "✕", on: { click: () => node.replaceChildren() } });
+  // The region is there from the start, so that what comes into it is read out.
+  const node = el("div", { class: "copy-notice", role: "status" });
   store.addEventListener("loaded", () => {
-    node.hidden = store.origin.kind !== "link";
-    if (!node.hidden) store.say("opened from a shared link: this is your own copy");
+    if (store.origin.kind === "link") node.replaceChildren(text, close);
+    else node.replaceChildren();
   });
   return node;
 }

@@ -19,7 +19,7 @@ export function ledger(root, store) {
   const count = el("h2", { class: "verdict" });
   const rest = el("p", { class: "verdict-rest" });
   const list = el("ol", { class: "requirements" });
-  const empty = el("p", { class: "empty", text: "No requirements yet. Add what the loop has to do; every move is then judged against it." });
+  const empty = el("p", { class: "empty", text: "Say what the loop has to do; every move is then judged against it." });
   const spoken = el("output", { class: "visually-hidden", role: "status" });
   const actions = rowActions(store, focusRow);
   const editor = requirementEditor(document.body, store);
@@ -53,7 +53,7 @@ export function ledger(root, store) {
   }
 
   function drawVerdict(assessment) {
-    root.dataset.verdict = assessment?.verdict ?? "";
+    root.dataset.verdict = assessment && rows.length === 0 ? "empty" : assessment?.verdict ?? "";
     const [head, more] = assessment ? splitHeadline(assessment.headline) : ["", ""];
     setText(count, head || (store.design ? "Reading the loop…" : "No design is open"));
     setText(rest, more);

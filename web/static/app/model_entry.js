@@ -1,12 +1,10 @@
 import { el, freshId } from "./element.js";
-import { field } from "./field.js";
+import { field, placeFaults, textInput } from "./field.js";
+import { exact } from "./format.js";
 import { MODEL_FORMS } from "./model_forms.js";
 import { modelReading } from "./model_reading.js";
 import { ask } from "./request.js";
-import { placeFaults } from "./field.js";
 import { numberFault, typedNumberOrNone } from "./typed_number.js";
-import { textInput } from "./field.js";
-import { exact } from "./format.js";
 
 /** A pause in the typing after which the server reads the model. */
 const READ_AFTER_MS = 220;

@@ -100,12 +100,12 @@ function listRows(store, cases, pinned) {
     [`gain crossovers, ${shown} and signed phase margin`, (one) => one.gain_crossovers.map((c) => `${at(c.rad_s)}: ${signed(c.signed_phase_margin_deg, 4)}°`)],
     [`phase crossovers, ${shown} and loop gain`, (one) => one.phase_crossovers.map((c) => `${at(c.rad_s)}: ${c.gain_db === null ? "unbounded" : `${signed(c.gain_db, 4)} dB`}`)],
     ["closed-loop poles, rad/s", (one) => (one.closed_loop_poles === null ? ["endless, with dead time"] : rootWords(one.closed_loop_poles))],
-    ["closed loop", (one) => [one.stability]],
+    ["closed loop", (one) => [one.stability], "in-sentences"],
   ];
-  const entries = (one, list) => (one ? (list(one).length === 0 ? ["none"] : list(one)).map((word) => el("div", { text: word })) : ["–"]);
-  return [groupRow("crossings and poles", cases.length * (pinned ? 2 : 1) + 1), ...lists.map(([name, list]) =>
+  const entries = (one, list, look) => (one ? (list(one).length === 0 ? ["none"] : list(one)) : ["–"]).map((word) => el("div", { class: look, text: word }));
+  return [groupRow("crossings and poles", cases.length * (pinned ? 2 : 1) + 1), ...lists.map(([name, list, look = null]) =>
     el("tr", { class: "list-row" }, el("th", { scope: "row", text: name }), ...cases.flatMap((one) => [
-      el("td", { class: "number" }, ...entries(one.now, list)),
-      pinned ? el("td", { class: "number was" }, ...entries(one.pinned, list)) : null,
+      el("td", { class: "number" }, ...entries(one.now, list, look)),
+      pinned ? el("td", { class: "number was" }, ...entries(one.pinned, list, look)) : null,
     ])))];
 }

@@ -1,7 +1,7 @@
 import { el, freshId, setText, textButton } from "./element.js";
 import { exact } from "./format.js";
 import { exactNumber } from "./exact_number.js";
-import { limitText, measureFacts, measureText, readingText, standing, unitOf, whereRead } from "./requirement_words.js";
+import { bareText, limitText, measureFacts, measureText, readingText, standing, unitOf, whereRead } from "./requirement_words.js";
 import { slackBar } from "./slack_bar.js";
 import { typedNumber } from "./typed_number.js";
 import { fromShown, toShown } from "./units.js";
@@ -63,15 +63,16 @@ export function requirementRow(store, index, requirement, actions) {
     setText(measure, measureText(requirement, facts().label, unit) + rank);
     limits.update();
     setText(worst, verdict ? readingText(verdict.reading, ruleUnit, unit) : "…");
-    setText(was, pinned ? readingText(pinned.reading, ruleUnit, unit) : "");
+    setText(was, pinned ? bareText(pinned.reading, ruleUnit, unit) : "");
     was.title = pinned ? `pinned, on ${pinned.case}` : "";
     setText(caseName, verdict?.case ?? "");
+    caseName.title = verdict?.case ?? "";
     node.dataset.standing = state;
     bar.update({ standing: state, slack: verdict?.slack, pinned: pinned?.slack });
     if (!more.hidden) drawFacts(told, store, requirement, verdict, ruleUnit);
   }
 
-  return { node, update, openLimit: limits.open };
+  return { node, update };
 }
 
 function limitNumbers(store, index, requirement, facts, actions) {

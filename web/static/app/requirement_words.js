@@ -24,6 +24,11 @@ export function readingText(reading, unit, shown) {
   return reading.state === "value" ? withUnit(reading.value, unit, shown) : STATE_WORDS[reading.state] ?? reading.state;
 }
 
+/** The same beside another one: the unit is there already. */
+export function bareText(reading, unit, shown) {
+  return reading.state === "value" ? number(valueInUnit(reading.value, unit, shown)) : readingText(reading, unit, shown);
+}
+
 /** Where a reading was taken: "at 4.70 rad/s", "at 0.31 s", or "". */
 export function whereRead(reading, shown) {
   if (typeof reading?.at_rad_s === "number") {

@@ -11,10 +11,10 @@ import { el, freshId } from "./element.js";
  * @property {(focus?: () => void) => void} close
  *
  * @param {HTMLElement} root
- * @param {{title: string, class?: string, onClose?: () => void}} options
+ * @param {{title: string, class?: string}} options
  * @returns {Sheet}
  */
-export function sheet(root, { title, class: extra = "", onClose }) {
+export function sheet(root, { title, class: extra = "" }) {
   const heading = el("h2", { id: freshId("sheet"), text: title });
   const body = el("div", { class: "sheet-body" });
   const foot = el("div", { class: "sheet-foot" });
@@ -24,7 +24,6 @@ export function sheet(root, { title, class: extra = "", onClose }) {
   let caller = null;
   let afterwards = null;
   dialog.addEventListener("close", () => {
-    onClose?.();
     // The row that called may have been drawn anew meanwhile; then the page keeps the focus.
     if (afterwards) afterwards();
     else if (caller?.isConnected) caller.focus();
