@@ -10,7 +10,7 @@ from starlette.types import ASGIApp
 
 from server import catalogue, faults, judging, live, pages, shared_designs
 from server.doorkeeper import Doorkeeper
-from server.faults import RefusedError
+from server.error_shape import RefusedError
 from server.services import Services
 from server.settings import Settings
 from server.version import loopwright_version
@@ -33,6 +33,7 @@ def web_application(services: Services) -> FastAPI:
 
     @asynccontextmanager
     async def lifespan(_: FastAPI) -> AsyncIterator[None]:
+        services.open()
         yield
         services.close()
 

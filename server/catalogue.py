@@ -9,8 +9,8 @@ from fastapi import APIRouter, Response
 from engine.design.measures import MEASURES, Measure
 from engine.design.schemas import json_schemas
 from server.demos import demo_list
+from server.error_shape import RefusedError
 from server.exact_json import exact_json
-from server.faults import RefusedError
 from server.services import Services
 from server.version import loopwright_version
 
@@ -57,7 +57,7 @@ def routes(services: Services) -> APIRouter:
     @router.get("/healthz")
     async def healthz() -> Response:
         """Whether the server answers and can store designs."""
-        await services.requests.run(services.store.check)
+        await services.disk(services.store.check)
         return exact_json({"ok": True, "version": loopwright_version()})
 
     return router

@@ -9,6 +9,7 @@ from collections.abc import Callable, Sequence
 from typing import NoReturn
 
 from engine.errors import LoopwrightError
+from server.quiet_numerics import quiet_numerics
 
 MET, NOT_MET, UNUSABLE, NOT_ASSESSABLE = 0, 1, 2, 3
 _EXIT_CODES = {"met": MET, "not met": NOT_MET, "not assessable": NOT_ASSESSABLE}
@@ -23,6 +24,7 @@ class CommandError(LoopwrightError):
 def main(arguments: Sequence[str] | None = None) -> int:
     """Carry out a command; returns the exit code of the contract."""
     given = list(sys.argv[1:] if arguments is None else arguments)
+    quiet_numerics()
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):  # JSON and CSV are UTF-8 wherever they are written
             stream.reconfigure(encoding="utf-8", errors="backslashreplace")

@@ -13,7 +13,8 @@ from starlette.datastructures import Headers, MutableHeaders
 from starlette.requests import ClientDisconnect
 from starlette.types import ASGIApp, Message, Receive, Scope, Send
 
-from server.faults import RefusedError, refuse
+from server.error_shape import RefusedError
+from server.faults import refuse
 from server.settings import Settings
 
 _HOST = re.compile(r"(?P<name>\[[0-9a-fA-F:.]+\]|[A-Za-z0-9._-]+)(:\d{1,5})?")

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from typing import Any
 
 from starlette.responses import Response
@@ -10,8 +9,11 @@ from starlette.responses import Response
 from server.json_text import json_text
 
 
-def exact_json(
-    value: Any, status: int = 200, headers: Mapping[str, str] | None = None, indent: int | None = None
-) -> Response:
-    """A JSON response."""
-    return Response(json_text(value, indent), status, headers, media_type="application/json")
+def exact_json(value: Any, status: int = 200, indent: int | None = None) -> Response:
+    """A value as a JSON response."""
+    return json_response(json_text(value, indent), status)
+
+
+def json_response(text: str, status: int = 200) -> Response:
+    """A text that is JSON already."""
+    return Response(text, status, media_type="application/json")

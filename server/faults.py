@@ -1,38 +1,21 @@
-"""The one error shape: `{"ok": false, "status": 422, "errors": [{"where": …, "what": …}]}`."""
+"""Every way to fail over HTTP, answered in the one error shape."""
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
-from typing import Any, TypeVar
+from collections.abc import Mapping
+from typing import TypeVar
 
 from fastapi import FastAPI, Request
 from fastapi.exceptions import RequestValidationError
 from starlette.exceptions import HTTPException
 from starlette.responses import JSONResponse
 
-from engine.errors import DesignError, Fault, LoopwrightError
+from engine.errors import DesignError, Fault
+from server.error_shape import SURPRISE, RefusedError, error_body
 from server.link_store import StoreError
+from server.worker import TooLongError
 
 Kind = TypeVar("Kind", bound=Exception)
-
-
-class RefusedError(LoopwrightError):
-    """A request that is answered with one clear line instead of a result."""
-
-    def __init__(self, status: int, what: str, where: str = "", headers: Mapping[str, str] | None = None) -> None:
-        super().__init__(what)
-        self.status = status
-        self.fault = Fault(where, what)
-        self.headers = headers
-
-
-def error_body(status: int, faults: Iterable[Fault]) -> dict[str, Any]:
-    """The error shape as a JSON-ready object."""
-    return {
-        "ok": False,
-        "status": status,
-        "errors": [{"where": fault.where, "what": fault.what} for fault in faults],
-    }
 
 
 def refuse(status: int, what: str, where: str = "", headers: Mapping[str, str] | None = None) -> JSONResponse:
@@ -44,6 +27,7 @@ def install(app: FastAPI) -> None:
     """Make every way to fail speak the one shape."""
     app.add_exception_handler(RefusedError, _on_refused)
     app.add_exception_handler(DesignError, _on_design_error)
+    app.add_exception_handler(TooLongError, _on_too_long)
     app.add_exception_handler(StoreError, _on_store_error)
     app.add_exception_handler(HTTPException, _on_http_exception)
     app.add_exception_handler(RequestValidationError, _on_parameters)
@@ -57,6 +41,15 @@ def _on_refused(_: Request, error: Exception) -> JSONResponse:
 
 def _on_design_error(_: Request, error: Exception) -> JSONResponse:
     return JSONResponse(error_body(422, _as(DesignError, error).faults), 422)
+
+
+def _on_too_long(_: Request, error: Exception) -> JSONResponse:
+    return refuse(422, too_long(_as(TooLongError, error)))
+
+
+def too_long(error: TooLongError) -> str:
+    """What a person can do about it."""
+    return f"{error}; use fewer plant cases, requirements or stages (or raise LOOPWRIGHT_MAX_SECONDS)"
 
 
 def _on_store_error(_: Request, error: Exception) -> JSONResponse:
@@ -83,7 +76,7 @@ def _on_parameters(_: Request, error: Exception) -> JSONResponse:
 
 
 def _on_surprise(_: Request, __: Exception) -> JSONResponse:
-    return refuse(500, "something went wrong in Loopwright itself; its log has the details")
+    return refuse(500, SURPRISE)
 
 
 def _as(kind: type[Kind], error: Exception) -> Kind:

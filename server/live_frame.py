@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.errors import Fault
-from server.faults import error_body
+from server.error_shape import error_body
 from server.json_text import json_text
 
 

@@ -12,7 +12,7 @@ from starlette.staticfiles import StaticFiles
 from starlette.templating import Jinja2Templates
 from starlette.types import Scope
 
-from server.faults import RefusedError
+from server.error_shape import RefusedError
 from server.plotly_script import PlotlyScript
 from server.services import Services
 from server.shared_designs import UNKNOWN
@@ -59,7 +59,7 @@ def _routes(app: FastAPI, services: Services, plotly: PlotlyScript) -> APIRouter
 
     @router.api_route("/d/{token}", methods=_HOW)
     async def workbench_on_shared_design(request: Request, token: str) -> Response:
-        known = await services.requests.run(services.store.get, token) is not None
+        known = await services.disk(services.store.get, token) is not None
         if not known and "text/html" not in request.headers.get("accept", ""):
             raise RefusedError(404, UNKNOWN, "token")
         return page(request, "workbench.html", 200 if known else 404, token=token)
@@ -79,7 +79,7 @@ def _routes(app: FastAPI, services: Services, plotly: PlotlyScript) -> APIRouter
             return Response(status_code=304, headers=headers)
         if "gzip" not in request.headers.get("accept-encoding", ""):
             return Response(plotly.plain, headers=headers, media_type="text/javascript")
-        packed = await services.requests.run(lambda: plotly.packed)
+        packed = await services.disk(lambda: plotly.packed)
         return Response(packed, headers={**headers, "Content-Encoding": "gzip"}, media_type="text/javascript")
 
     return router

@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from typing import Any
 
 from starlette.requests import Request
 
-from engine.errors import DesignError, Fault
-from server.faults import RefusedError
+from server.error_shape import RefusedError
 
 DESIGN_BODY: dict[str, Any] = {"$ref": "/api/schemas/design"}
 
@@ -19,22 +18,6 @@ async def body_text(request: Request) -> bytes:
     if kind != "application/json" and not (kind.startswith("application/") and kind.endswith("+json")):
         raise RefusedError(415, f"send JSON with Content-Type: application/json, is {kind[:60] or 'not given'!r}")
     return await request.body()
-
-
-def fields_of(data: Any, required: Sequence[str], optional: Sequence[str] = ()) -> Mapping[str, Any]:
-    """A JSON object with these fields and no others; DesignError names every field that is wrong."""
-    if not isinstance(data, dict):
-        raise DesignError("", f"must be a JSON object with {', '.join([*required, *optional])}")
-    known = {*required, *optional}
-    faults = [Fault(name, "is missing") for name in required if name not in data]
-    faults += [
-        Fault(name[:80], f"is not a field here; known are {', '.join([*required, *optional])}")
-        for name in data
-        if name not in known
-    ]
-    if faults:
-        raise DesignError.of(faults[:20])
-    return data
 
 
 def described(schema: Mapping[str, Any]) -> dict[str, Any]:

@@ -16,6 +16,7 @@ from engine.errors import LoopwrightError
 from server.application import create_app
 from server.settings import Settings
 from server.version import loopwright_version
+from server.worker import LOG_FORMAT
 
 _BACKLOG = 128
 _GRACE_S = 3
@@ -28,7 +29,7 @@ class ListenError(LoopwrightError):
 def serve(settings: Settings, open_browser: bool) -> int:
     """Run until stopped; returns the exit code."""
     listening = listen_on(settings.host, settings.port)
-    logging.basicConfig(level=logging.WARNING, format="%(asctime)s %(levelname)s %(name)s: %(message)s")
+    logging.basicConfig(level=logging.WARNING, format=LOG_FORMAT)
     config = uvicorn.Config(
         create_app(settings),
         log_config=None,

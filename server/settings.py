@@ -43,6 +43,8 @@ class Settings:
     """LOOPWRIGHT_MAX_BODY_BYTES: largest request body or socket message."""
     stored_designs: int = 100_000
     """LOOPWRIGHT_MAX_STORED_DESIGNS: most designs in the link store."""
+    seconds: int = 20
+    """LOOPWRIGHT_MAX_SECONDS: longest time to compute one answer."""
     sockets: int = 64
     """LOOPWRIGHT_MAX_SOCKETS: most live connections of one process at a time."""
     limits: Limits = field(default_factory=Limits)
@@ -119,5 +121,6 @@ _VARIABLES: dict[str, tuple[str, Callable[[str, str], Any]]] = {
     "hosts": (PREFIX + "HOSTS", _names),
     "body_bytes": (LIMIT_PREFIX + "BODY_BYTES", _count),
     "stored_designs": (LIMIT_PREFIX + "STORED_DESIGNS", _count),
+    "seconds": (LIMIT_PREFIX + "SECONDS", _count),
     "sockets": (LIMIT_PREFIX + "SOCKETS", _count),
 }

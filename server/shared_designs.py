@@ -3,15 +3,13 @@
 from __future__ import annotations
 
 import json
-from typing import Annotated, Any
+from typing import Annotated
 
 from fastapi import APIRouter, Header, Request, Response
 
-from engine.design.canonical import design_sha256
-from engine.design.parse import parse_design
+from server import computing
+from server.error_shape import RefusedError
 from server.exact_json import exact_json
-from server.faults import RefusedError
-from server.json_text import json_text, parse_json
 from server.request_body import DESIGN_BODY, body_text, described
 from server.services import Services
 from server.settings import Settings
@@ -34,25 +32,21 @@ def routes(services: Services) -> APIRouter:
     async def share(request: Request) -> Response:
         """Store a design for good. The withdraw key is told this once."""
         text = await body_text(request)
-
-        def work() -> dict[str, Any]:
-            document = parse_design(parse_json(text), services.settings.limits).document()
-            fingerprint = design_sha256(document)
-            ticket = store.put(json_text(document), fingerprint)
-            return {
-                "ok": True,
-                "token": ticket.token,
-                "link": link_to(services.settings, request, ticket.token),
-                "withdraw_key": ticket.withdraw_key,
-                "design_sha256": fingerprint,
-            }
-
-        return exact_json(await services.requests.run(work), 201)
+        ready = await services.requests.run(computing.checked, text, services.settings.limits)
+        ticket = await services.disk(store.put, ready.document, ready.design_sha256)
+        told = {
+            "ok": True,
+            "token": ticket.token,
+            "link": link_to(services.settings, request, ticket.token),
+            "withdraw_key": ticket.withdraw_key,
+            "design_sha256": ready.design_sha256,
+        }
+        return exact_json(told, 201)
 
     @router.get("/api/designs/{token}")
     async def shared(request: Request, token: str) -> Response:
         """A shared design, exactly as it was stored."""
-        stored = await services.requests.run(store.get, token)
+        stored = await services.disk(store.get, token)
         if stored is None:
             raise RefusedError(404, UNKNOWN, "token")
         return exact_json(
@@ -74,7 +68,7 @@ def routes(services: Services) -> APIRouter:
         """Remove a shared design; whoever has its link finds nothing any more."""
         if not withdraw_key:
             raise RefusedError(401, f"give the withdraw key in the header {WITHDRAW_HEADER}", WITHDRAW_HEADER)
-        done = await services.requests.run(store.withdraw, token, withdraw_key)
+        done = await services.disk(store.withdraw, token, withdraw_key)
         if done == "unknown":
             raise RefusedError(404, UNKNOWN, "token")
         if done == "wrong key":

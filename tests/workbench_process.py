@@ -67,6 +67,14 @@ class WorkbenchProcess:
         """Everything the server has printed, log lines included."""
         return "".join(self.lines)
 
+    def children(self) -> list[int]:
+        """Process ids of what it has started."""
+        return [
+            int(stat.parent.name)
+            for stat in Path("/proc").glob("[0-9]*/stat")
+            if (fields := _fields(stat)) and fields[1] == str(self._process.pid)
+        ]
+
     @property
     def runs(self) -> bool:
         return self._process.poll() is None
@@ -90,3 +98,17 @@ class WorkbenchProcess:
         """The same store on the same port."""
         self.stop()
         self._start()
+
+
+def has_ended(process_id: int) -> bool:
+    """Whether a process has ended; one that only waits to be collected by its parent counts as ended."""
+    fields = _fields(Path(f"/proc/{process_id}/stat"))
+    return not fields or fields[0] == "Z"
+
+
+def _fields(stat: Path) -> list[str]:
+    """State, parent, … of a process (proc(5)); empty when it is gone."""
+    try:
+        return stat.read_text().rpartition(")")[2].split()
+    except OSError:
+        return []

@@ -16,7 +16,7 @@ from websockets.sync.client import ClientConnection, connect
 
 from engine.design.assess import CURVES
 from engine.design.limits import Limits
-from server.live import answer_to
+from server.live_answer import answer_to
 from tests.server.asking import assert_serves, client
 from tests.server.frames import decode
 from tests.workbench_process import WorkbenchProcess
@@ -232,7 +232,7 @@ def test_a_surprise_is_a_frame_and_a_line_in_the_log(
     def broken(_: object) -> None:
         raise ZeroDivisionError("inside")
 
-    monkeypatch.setattr("server.live.assess_with_arrays", broken)
+    monkeypatch.setattr("server.live_answer.assess_with_arrays", broken)
     header, _ = decode(answer_to(json.dumps({"seq": 9, "design": plain_design}), 10**6, Limits()))
     assert (header["seq"], header["status"]) == (9, 500)
     assert "inside" not in header["errors"][0]["what"]

@@ -159,9 +159,9 @@ def test_the_transfer_function_as_a_file(ask: httpx.Client, plain_design: dict[s
 def test_a_token_of_another_design_is_no_trace(ask: httpx.Client, plain_design: dict[str, Any]) -> None:
     ticket = ask.post("/api/designs", json=plain_design).json()
     plain_design["compensator"]["gain"] = 2.0
-    for token in (ticket["token"], "nothing"):
+    for token, what in ((ticket["token"], "stands for another design"), ("nothing", "stands for no shared design")):
         answer = ask.post(f"/api/exports/transfer-function?token={token}", json=plain_design)
-        assert_refused(answer, 422, "token", "does not stand for this design")
+        assert_refused(answer, 422, "token", what)
 
 
 def test_the_curves_as_a_table(ask: httpx.Client, plain_design: dict[str, Any]) -> None:

@@ -1,0 +1,110 @@
+"""A process that computes for the server: out of the way of the event loop, and stoppable.
+
+A computation in a thread cannot be stopped, and takes Python's lock from the thread that reads the sockets. A worker
+that takes too long is ended and replaced.
+"""
+
+from __future__ import annotations
+
+import logging
+import os
+import signal
+import traceback
+from collections.abc import Callable
+from multiprocessing import get_context
+from multiprocessing.connection import Connection
+from multiprocessing.process import BaseProcess
+from typing import Any
+
+from engine.errors import DesignError, LoopwrightError
+from server.error_shape import SURPRISE, RefusedError
+from server.quiet_numerics import quiet_numerics
+
+LOG_FORMAT = "%(asctime)s %(levelname)s %(name)s: %(message)s"
+_LOG = logging.getLogger("loopwright.worker")
+_SPAWN = get_context("spawn")  # a fork would copy the server's sockets and threads
+_DONE, _FAULTS, _SURPRISE = "done", "faults", "surprise"
+
+
+class TooLongError(LoopwrightError):
+    """A computation was ended because it took too long."""
+
+
+class Worker:
+    """The server's end. One computation at a time; not for several threads at once."""
+
+    def __init__(self, niceness: int = 0) -> None:
+        self._niceness = niceness
+        self._process: BaseProcess | None = None
+        self._line: Connection[Any, Any] | None = None
+
+    def call(self, work: Callable[..., Any], arguments: tuple[Any, ...], seconds: float) -> Any:
+        """The result of `work(*arguments)`, computed in the worker.
+
+        Raises
+        ------
+        DesignError : as raised by the work
+        TooLongError : it took longer than `seconds`
+        RefusedError : anything else went wrong
+        """
+        line = self.start()
+        try:
+            line.send((work, arguments))
+            if not line.poll(seconds):
+                self.stop()
+                raise TooLongError(f"takes longer than {seconds:g} s to compute")
+            outcome, value = line.recv()
+        except (EOFError, OSError) as error:  # the process was ended from outside, for want of memory perhaps
+            self.stop()
+            _LOG.error("a worker ended in the middle of its work: %r", error)
+            raise RefusedError(500, SURPRISE) from None
+        if outcome == _FAULTS:
+            raise DesignError.of(value)
+        if outcome == _SURPRISE:
+            _LOG.error("a computation failed\n%s", value)
+            raise RefusedError(500, SURPRISE)
+        return value
+
+    def start(self) -> Connection[Any, Any]:
+        """Make sure that the process runs; it is started once and kept."""
+        if self._line is not None and self._process is not None and self._process.is_alive():
+            return self._line
+        self.stop()
+        self._line, others = _SPAWN.Pipe()
+        self._process = _SPAWN.Process(target=_work, args=(others, self._niceness), daemon=True)
+        self._process.start()
+        others.close()
+        return self._line
+
+    def stop(self) -> None:
+        """End the process, whatever it is doing."""
+        if self._process is not None:
+            self._process.kill()
+            self._process.join()
+        if self._line is not None:
+            self._line.close()
+        self._process = self._line = None
+
+
+def _work(line: Connection[Any, Any], niceness: int) -> None:
+    """The worker's end: answer until the other end is gone."""
+    signal.signal(signal.SIGINT, signal.SIG_IGN)  # Ctrl+C reaches every process; the server ends its workers itself
+    if niceness and hasattr(os, "nice"):
+        os.nice(niceness)
+    logging.basicConfig(level=logging.WARNING, format=LOG_FORMAT)
+    quiet_numerics()
+    while True:
+        try:
+            work, arguments = line.recv()
+        except (EOFError, OSError):
+            return
+        line.send(_outcome_of(work, arguments))
+
+
+def _outcome_of(work: Callable[..., Any], arguments: tuple[Any, ...]) -> tuple[str, Any]:
+    try:
+        return _DONE, work(*arguments)
+    except DesignError as error:
+        return _FAULTS, error.faults
+    except Exception:
+        return _SURPRISE, traceback.format_exc()
