@@ -16,17 +16,17 @@ from typing import TypeAlias
 import numpy as np
 from numpy.typing import NDArray
 
+from engine.loop.characteristic import Characteristic
 from engine.loop.close_roots import exact_closed_loop_roots
+from engine.loop.delay_roots import DominantRoots, dominant_roots
 from engine.loop.loop_set import LoopSet
-from engine.loop.packed import RootTable, root_table, time_scales
-from engine.loop.section_chain import chain_matrix
+from engine.loop.packed import time_scales
+from engine.loop.simultaneous import polish_together, with_exact_conjugates
 from engine.model.factored import ComplexArray, Factored, FloatArray
 
 IntArray: TypeAlias = NDArray[np.int64]
 BoolArray: TypeAlias = NDArray[np.bool_]
 
-EPSILON = float(np.finfo(np.float64).eps)
-MOST_ITERATIONS = 60
 # |1 + L(∞)| below which the loop is taken for an algebraic one: rounding of the gain alone reaches this.
 ALGEBRAIC = 1e-13
 # A loop with a root less certain than this, relative to its size, is solved exactly.
@@ -44,25 +44,40 @@ class ClosedLoopRoots:
     """(c,) number of roots listed."""
     complete: BoolArray
     """(c,) True: all roots there are; False: the dominant ones of a loop with dead time."""
+    dominant: tuple[DominantRoots | None, ...] = ()
+    """(c,) how far the roots of a loop with dead time are listed; None for the others."""
 
 
 def closed_loop_roots(loops: LoopSet) -> ClosedLoopRoots:
     """All closed-loop roots of the loops without dead time, the dominant ones of those with it [rad/s].
 
     Every root of D(s) + N(s) is listed, those that a zero hides from the loop's response too. A loop whose leading
-    coefficients cancel (L(∞) = −1) has fewer roots than poles. An improper loop has as many roots as zeros.
+    coefficients cancel (L(∞) = −1) has fewer roots than poles. An improper loop has as many roots as zeros. With dead
+    time and |L(∞)| ≥ 1 endlessly many roots are unstable, and none is listed.
     """
     rational = np.array([loop.dead_time_s == 0.0 for loop in loops.loops])
     lists = [NO_ROOTS] * loops.count
+    dominant: list[DominantRoots | None] = [None] * loops.count
     chosen = np.flatnonzero(rational).tolist()
-    for case, each in zip(chosen, rational_roots([loops.loops[case] for case in chosen]), strict=True):
-        lists[case] = each
+    if chosen:
+        for case, each in zip(chosen, rational_roots([loops.loops[case] for case in chosen]), strict=True):
+            lists[case] = each
+    delayed = [case for case, loop in enumerate(loops.loops) if loop.dead_time_s > 0.0 and _falls_off(loop)]
+    if delayed:
+        for case, found in zip(delayed, dominant_roots([loops.loops[case] for case in delayed]), strict=True):
+            dominant[case] = found
+            lists[case] = _sorted_roots(np.concatenate([found.roots, found.roots[found.roots.imag > 0.0].conj()]))
     longest = max((len(each) for each in lists), default=0)
     roots = np.full((loops.count, longest), np.nan + 0.0j)
     for case, each in enumerate(lists):
         roots[case, : len(each)] = each
     count = np.array([len(each) for each in lists], dtype=np.int64)
-    return ClosedLoopRoots(roots, count, rational)
+    return ClosedLoopRoots(roots, count, rational, tuple(dominant))
+
+
+def _falls_off(loop: Factored) -> bool:
+    """Whether |L(∞)| < 1; otherwise dead time makes endlessly many unstable roots, and none dominates."""
+    return loop.relative_degree > 0 or (loop.relative_degree == 0 and abs(loop.gain) < 1.0)
 
 
 def rational_roots(loops: Sequence[Factored]) -> list[ComplexArray]:
@@ -108,8 +123,8 @@ def _proper_roots(loops: Sequence[Factored], scale: FloatArray) -> list[ComplexA
     if plain:
         chosen, scales = [loops[case] for case in plain], scale[plain]
         starts, live = (characteristic := Characteristic.of(chosen, scales)).starts()
-        roots, error = _aberth(characteristic, starts, live)
-        roots = _conjugate(roots, live)
+        roots, error = polish_together(characteristic, starts, live)
+        roots = with_exact_conjugates(roots, live)
         with np.errstate(invalid="ignore"):
             sure = np.logical_and.reduce((error <= UNCERTAIN * np.abs(roots)) | ~live, axis=1)
         roots = _in_order(roots * scales[:, None], live)
@@ -122,101 +137,6 @@ def _proper_roots(loops: Sequence[Factored], scale: FloatArray) -> list[ComplexA
 def is_algebraic(loop: Factored) -> bool:
     """Whether 1 + L(∞) vanishes: the loop then has no unique solution at the instant of a step."""
     return loop.relative_degree == 0 and loop.dead_time_s == 0.0 and abs(1.0 + loop.gain) <= ALGEBRAIC
-
-
-@dataclass(frozen=True, eq=False)
-class Characteristic:
-    """D(s) + N(s) of proper loops, in scaled time."""
-
-    poles: RootTable
-    zeros: RootTable
-    gain: FloatArray
-    """(c,) gain in scaled time."""
-
-    @classmethod
-    def of(cls, loops: Sequence[Factored], scale: FloatArray) -> Characteristic:
-        """The characteristic functions with s divided by `scale` (c,)."""
-        degree = np.array([loop.relative_degree for loop in loops])
-        gain = np.array([loop.gain for loop in loops]) * scale ** (-degree.astype(np.float64))
-        poles = root_table([loop.poles for loop in loops]).scaled(scale)
-        zeros = root_table([loop.zeros for loop in loops]).scaled(scale)
-        return cls(poles, zeros, gain)
-
-    def newton(self, s: ComplexArray) -> tuple[ComplexArray, ComplexArray, FloatArray]:
-        """p, p' and |D| + |N| at s (c, n)."""
-        at_poles, at_zeros = self.poles.factors(s), self.zeros.factors(s)
-        # A start value exactly on a pole would make 0·∞ of a derivative that is finite.
-        if not (at_poles.all() and at_zeros.all()):
-            at_poles = np.where(at_poles == 0.0, 1e-200, at_poles)
-            at_zeros = np.where(at_zeros == 0.0, 1e-200, at_zeros)
-        d = np.multiply.reduce(at_poles, axis=0)
-        n = np.multiply.reduce(at_zeros, axis=0) * self.gain[:, None]
-        slope = d * np.add.reduce(self.poles.mask / at_poles, axis=0)
-        slope = slope + n * np.add.reduce(self.zeros.mask / at_zeros, axis=0)
-        return d + n, slope, np.abs(d) + np.abs(n)
-
-    def starts(self) -> tuple[ComplexArray, BoolArray]:
-        """(c, n) start values and which of them belong to the case."""
-        poles, zeros = self.poles.roots[:, :, 0].T, self.zeros.roots[:, :, 0].T
-        orders = np.stack([self.poles.mask.sum(axis=0)[:, 0], self.zeros.mask.sum(axis=0)[:, 0]]).astype(np.int64)
-        width = 2 * ((poles.shape[1] + 1) // 2)
-        poles, zeros = _paired(poles, orders[0], width), _paired(zeros, orders[1], width)
-        filler = 1.5 * np.abs(poles).max(axis=1) + 1.0
-        values = np.linalg.eigvals(chain_matrix(poles, zeros, orders, self.gain, filler)).astype(np.complex128)
-        # The filler comes out exactly, being decoupled; put it last and cut it off.
-        fillers = values == filler[:, None]
-        if fillers.any():
-            order = np.argsort(fillers, axis=1, kind="stable")
-            values = np.take_along_axis(values, order, axis=1)[:, : self.poles.mask.shape[0]]
-        place = np.arange(values.shape[1])
-        # Symmetric start values could never leave the symmetry: two on the real axis would stay there.
-        turn = np.exp(1j * (0.4 + 1.7 * place))
-        return values + 1e-9 * (np.abs(values) + 1e-12) * turn, place < orders[0][:, None]
-
-
-def _paired(roots: ComplexArray, count: IntArray, width: int) -> ComplexArray:
-    """(c, width): complex pairs first, then real roots by size, so that sections hold whole pairs."""
-    padded = np.zeros((roots.shape[0], width), dtype=np.complex128)
-    padded[:, : roots.shape[1]] = roots
-    size = np.abs(padded) + np.where(padded.imag != 0.0, 0.0, 1e150)
-    size[np.arange(width) >= count[:, None]] = np.inf
-    order = np.argsort(size, axis=1, kind="stable")
-    return np.take_along_axis(padded, order, axis=1)
-
-
-def _aberth(p: Characteristic, s: ComplexArray, live: BoolArray) -> tuple[ComplexArray, FloatArray]:
-    """Polished roots and a bound of the error that rounding leaves in each, both (c, n)."""
-    factors = p.poles.mask.shape[0] + p.zeros.mask.shape[0] + 2
-    own = np.eye(s.shape[1])[:, None, :]
-    mutual = (live.T[:, :, None] & live[None, :, :]) * (1.0 - own)
-    settled = ~live
-    error = np.zeros(s.shape)
-    with np.errstate(all="ignore"):
-        for _ in range(MOST_ITERATIONS):
-            value, slope, size = p.newton(s)
-            # Σ 1/(s_k − s_i) over the others; two in one place give nan, and the loop goes the exact way.
-            repulsion = np.add.reduce(mutual / (s.T[:, :, None] - s + own), axis=0)
-            move = value / (slope + value * repulsion)
-            noise = 2.0 * EPSILON * factors * size / np.abs(slope)
-            error = np.where(settled, error, noise)
-            s = np.where(settled, s, s - move)
-            reached = np.abs(move) <= np.maximum(4.0 * EPSILON * np.abs(s), 0.1 * noise)
-            settled = settled | reached
-            if settled.all():
-                break
-    return s, np.where(settled, error, np.inf)
-
-
-def _conjugate(roots: ComplexArray, live: BoolArray) -> ComplexArray:
-    """The same roots with exact conjugates; a root that is its own partner becomes real."""
-    with np.errstate(all="ignore"):
-        distance = np.abs(roots[:, :, None] - roots.conj()[:, None, :])
-    distance[~(live[:, :, None] & live[:, None, :])] = np.inf
-    partner = distance.argmin(axis=2)
-    mutual = np.take_along_axis(partner, partner, axis=1) == np.arange(roots.shape[1])
-    together = 0.5 * (roots + np.take_along_axis(roots, partner, axis=1).conj())
-    # A cluster whose members choose each other in a ring is left to `close_roots`.
-    return np.where(mutual | ~live, together, np.nan)
 
 
 def _in_order(roots: ComplexArray, live: BoolArray) -> ComplexArray:

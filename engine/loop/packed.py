@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from engine.model.factored import ComplexArray, Factored, FloatArray
 
@@ -23,6 +24,10 @@ class RootTable:
     def factors(self, s: ComplexArray) -> ComplexArray:
         """(k, c, n): s − root, and exactly 1 where padded; s is (c, n)."""
         return self.mask * s - self.roots
+
+    def of_cases(self, case: NDArray[np.int64]) -> RootTable:
+        """The lists of the cases named, one each."""
+        return RootTable(self.roots[:, case], self.mask[:, case])
 
     def scaled(self, scale: FloatArray) -> RootTable:
         """The roots divided by `scale` (c,)."""
