@@ -3,6 +3,7 @@
 import { shownUnit, toShown, valueInUnit } from "./units.js";
 
 const MINUS = "\u2212";
+const THIN_SPACE = "\u202f";
 
 
 /** `digits` significant digits; powers of ten outside 1e-4…1e6. @param {number} value @param {number} [digits] */
@@ -11,8 +12,9 @@ export function number(value, digits = 3) {
   if (value === 0) return "0";
   const size = Math.abs(value);
   if (size < 1e-4 || size >= 1e6) return trueMinus(powerOfTen(value, digits));
-  const places = Math.max(0, digits - 1 - Math.floor(Math.log10(size)));
-  return trueMinus(value.toFixed(Math.min(places, 12)));
+  const places = digits - 1 - Math.floor(Math.log10(size));
+  if (places < 0) return grouped(String(Number(value.toPrecision(digits))));
+  return grouped(value.toFixed(Math.min(places, 12)));
 }
 
 /** The number as one would type it: all its digits, up to 12, no padding. @param {number} value */
@@ -51,9 +53,12 @@ export function joinUnit(text, unit) {
   return unit === "°" || unit === "deg" || unit === "degrees" ? `${text}°` : `${text} ${unit}`;
 }
 
-/** Short tick text for an axis: 0.015, 1.2, 3k is never used. @param {number} value */
+/** Short tick text for an axis: 0.015, 1.2, 30 000, 10⁶, 5·10⁻⁷. @param {number} value */
 export function tick(value) {
-  return exact(Number(value.toPrecision(4)));
+  const short = Number(value.toPrecision(6));
+  const size = Math.abs(short);
+  if (short !== 0 && (size < 1e-4 || size >= 1e6)) return trueMinus(powerOfTen(short, 3).replace(/\.?0+·/, "·")).replace(/^(−?)1·/, "$1");
+  return grouped(String(short));
 }
 
 function powerOfTen(/** @type {number} */ value, /** @type {number} */ digits) {
@@ -64,6 +69,13 @@ function powerOfTen(/** @type {number} */ value, /** @type {number} */ digits) {
 function superscript(/** @type {number} */ power) {
   const digits = "⁰¹²³⁴⁵⁶⁷⁸⁹";
   return (power < 0 ? "⁻" : "") + [...String(Math.abs(power))].map((digit) => digits[Number(digit)]).join("");
+}
+
+/** Digits in threes from 10 000 on, with a thin space that does not break. */
+function grouped(/** @type {string} */ text) {
+  const [whole, part] = text.split(".");
+  const spaced = whole.replace("-", "").length > 4 ? whole.replace(/\B(?=(\d{3})+$)/g, THIN_SPACE) : whole;
+  return trueMinus(part === undefined ? spaced : `${spaced}.${part}`);
 }
 
 function trueMinus(/** @type {string} */ text) {

@@ -51,15 +51,15 @@ export function barGrasp(scene, stage, at) {
 }
 
 /** @param {Scene} scene @param {string} id @param {() => Point} at @param {number} pxPerDecade of damping
- *  @returns {Grasp} */
-export function dampingGrasp(scene, id, at, pxPerDecade) {
+ *  @param {() => boolean} upwards which way the stem stands @returns {Grasp} */
+export function dampingGrasp(scene, id, at, pxPerDecade, upwards) {
   const damping = () => /** @type {import("./corners.js").Shape} */ (dampingsOf(scene.design).find((one) => one.id === id));
   return {
     name: () => damping().name,
     value: () => damping().value,
     text: () => `damping ${number(damping().value)}`,
     ends: () => [damping().least, damping().most],
-    dragged: (start, _dx, dy) => Math.min(2, Math.max(1e-4, start * 10 ** (-dy / pxPerDecade))),
+    dragged: (start, _dx, dy) => Math.min(2, Math.max(1e-4, start * 10 ** ((upwards() ? -dy : dy) / pxPerDecade))),
     stepped: logarithmic.stepped,
     set: (design, value) => damping().set(design, value),
     at, stage: damping().stage,

@@ -11,8 +11,8 @@ import { set, svg } from "./svg.js";
 
 const APART_PX = 23;
 const LIFT_PX = 27;
-const STEM_PX = [18, 60];
-const STEM_PX_PER_DECADE = 14;
+const STEM_PX = [20, 76];
+const STEM_PX_PER_DECADE = 12;
 const ARM_PX = [15, 140];
 const CHEVRON_PX = [16, 64];
 
@@ -83,21 +83,23 @@ function stems(/** @type {SVGElement} */ parent, /** @type {import("./scene.js")
   const tipOf = (/** @type {Corner} */ corner) => {
     const { x, y } = at(corner.id);
     const damping = dampingsOf(scene.design).find((one) => one.stage === corner.stage)?.value ?? 1;
-    const long = STEM_PX[0] + STEM_PX_PER_DECADE * (Math.log10(damping) + 4) * 0.75;
-    return { x, y: y - Math.max(STEM_PX[0], Math.min(STEM_PX[1] + 20, long)) };
+    const long = STEM_PX[0] + STEM_PX_PER_DECADE * (Math.log10(damping) + 4);
+    const length = Math.max(STEM_PX[0], Math.min(STEM_PX[1], long));
+    const up = y - length > scene.geometry.gain.top + 6;
+    return { x, y: up ? y - length : y + length, up };
   };
   return keyed(parent, (/** @type {Corner} */ corner) => `${corner.id} stem`,
     (corner) => {
       const line = svg("path", { class: "stem" });
       const tip = { now: tipOf(corner) };
-      const grasp = dampingGrasp(scene, `${corner.stage}.damping`, () => tip.now, STEM_PX_PER_DECADE * 0.75);
+      const grasp = dampingGrasp(scene, `${corner.stage}.damping`, () => tip.now, STEM_PX_PER_DECADE, () => tip.now.up);
       const grip = handle(hand, grasp, { class: "stem-tip", orientation: "vertical", reach: 12 }, svg("path", { class: "stroke", d: "M-6 0H6" }));
       return { node: svg("g", {}, line, grip.node), line, grip, tip };
     },
     (part, corner) => {
       const { x, y } = at(corner.id);
       part.tip.now = tipOf(corner);
-      set(part.line, { d: `M${x} ${y - 12}V${part.tip.now.y}` });
+      set(part.line, { d: `M${x} ${part.tip.now.up ? y - 12 : y + 12}V${part.tip.now.y}` });
       set(part.grip.node, { transform: `translate(${x} ${part.tip.now.y})` });
       part.grip.speak();
     });

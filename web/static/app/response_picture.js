@@ -3,7 +3,7 @@
 import { bandOf, curveOf } from "./envelope.js";
 import { tick } from "./format.js";
 import { markedRow } from "./marked.js";
-import { linearTicks } from "./scales.js";
+import { linearTicks, timeUnit } from "./scales.js";
 
 /** @typedef {import("./loop_picture.js").Curve} Curve */
 /** @typedef {"command" | "load" | "effort"} ResponseName */
@@ -21,7 +21,11 @@ export function stableCases(assessment) {
  *  @param {{time: [number, number], values: [number, number][]}} ranges @returns {import("./loop_picture.js").Picture} */
 export function responsePicture(store, geometry, ranges) {
   const { width, height, left, right, plots } = geometry;
-  const xTicks = linearTicks(...ranges.time, Math.max(3, Math.round((right - left) / 64))).map((at) => ({ at, text: tick(at) }));
+  const unit = timeUnit(ranges.time[1]);
+  const room = (24 / (right - left)) * (ranges.time[1] - ranges.time[0]);
+  const xTicks = linearTicks(...ranges.time, Math.max(3, Math.round((right - left) / 64)))
+    // The end of the axis belongs to the unit.
+    .map((at) => ({ at, text: at > ranges.time[1] - room ? "" : tick(at / unit.seconds) }));
   return {
     width, height, left, right, logarithmic: false,
     plots: RESPONSES.map((name, index) => ({

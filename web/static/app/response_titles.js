@@ -18,8 +18,8 @@ export function responseTitles(stage, store) {
     draw(geometry) {
       const { signals, scenario, actuator } = store.design ?? {};
       command.update(signals, scenario);
-      load.update(signals?.output?.unit, loadWords(signals, scenario));
-      effort.update(signals?.effort?.unit, actuatorWords(actuator));
+      load.update(unitOf(signals?.output), loadWords(signals, scenario));
+      effort.update(unitOf(signals?.effort), actuatorWords(actuator));
       for (const [index, title] of titles.entries()) {
         title.node.style.transform = `translate(${TITLE_LEFT}px, ${geometry.plots[index].top - 22}px)`;
         title.node.style.width = `${geometry.right - TITLE_LEFT}px`;
@@ -34,8 +34,8 @@ function plainTitle(/** @type {string} */ name) {
   const node = el("div", { class: "response-title" }, el("span", { class: "plot-name", text: name }), unit, more);
   return {
     node, unit, more,
-    update(/** @type {string | undefined} */ unitText, /** @type {string} */ moreText) {
-      setText(unit, unitText ?? "");
+    update(/** @type {string} */ unitText, /** @type {string} */ moreText) {
+      setText(unit, unitText);
       setText(more, moreText);
     },
   };
@@ -49,7 +49,7 @@ function commandTitle(/** @type {import("./store.js").Store} */ store) {
     node: title.node,
     update(/** @type {any} */ signals, /** @type {any} */ scenario) {
       const shape = scenario?.command?.shape ?? "step";
-      setText(title.unit, signals?.output?.unit ?? "");
+      setText(title.unit, unitOf(signals?.output));
       for (const button of shapes) button.setAttribute("aria-pressed", String(button.textContent === shape));
     },
   };
@@ -62,9 +62,14 @@ function setShape(/** @type {import("./store.js").Store} */ store, /** @type {st
   });
 }
 
+/** A pure number has no unit to show. @param {{unit?: string} | undefined} signal */
+function unitOf(signal) {
+  return signal?.unit && signal.unit !== "1" ? signal.unit : "";
+}
+
 // The load enters where the effort does, so it is counted in the effort's unit.
 function loadWords(/** @type {any} */ signals, /** @type {any} */ scenario) {
-  return `step of ${joinUnit(tick(scenario?.load?.amplitude ?? 1), signals?.effort?.unit ?? "")}`;
+  return `step of ${joinUnit(tick(scenario?.load?.amplitude ?? 1), unitOf(signals?.effort))}`;
 }
 
 function actuatorWords(/** @type {any} */ actuator) {

@@ -11,7 +11,7 @@ import { readingFlag } from "./reading_flag.js";
 import { responseMark } from "./response_mark.js";
 import { actuatorLimits, responsePicture, RESPONSES, stableCases } from "./response_picture.js";
 import { responseTitles } from "./response_titles.js";
-import { linearScale } from "./scales.js";
+import { linearScale, timeUnit } from "./scales.js";
 import { zoomSurface } from "./surface.js";
 import { set, svg } from "./svg.js";
 import { fittedResponse, fittedTime, steady, View } from "./view.js";
@@ -35,7 +35,8 @@ export function responses(root, store) {
   const titles = responseTitles(stage.node, store);
   const notes = svg("g", { class: "titles" });
   const unstable = svg("text", { class: "unstable" });
-  notes.append(unstable);
+  const units = RESPONSES.map(() => svg("text", { class: "tick unit", "text-anchor": "end" }));
+  notes.append(unstable, ...units);
   stage.overlay.append(notes);
   const mark = responseMark(stage.overlay, store);
   const reading = readingFlag(stage.overlay);
@@ -76,6 +77,8 @@ export function responses(root, store) {
     surface.draw();
     titles.draw(geometry);
     set(unstable, { x: geometry.left + 8, y: geometry.plots[0].bottom - 10, text: unstableWords(store.lastGood.assessment.cases) });
+    const unit = timeUnit(/** @type {any} */ (view.range)[1]).text;
+    units.forEach((node, index) => set(node, { x: geometry.right, y: geometry.plots[index].bottom + 15, text: unit }));
     mark.draw(picture);
     words.place(2, geometry.plots[2].bottom + 4);
     drawReading(picture);
@@ -91,7 +94,8 @@ export function responses(root, store) {
     const time = scale().value(place.x);
     const line = (/** @type {number} */ at, /** @type {string} */ kind) => ({ kind, text: `${cases[at].name}  ${number(valueAt(time_s.data, curveOf(array, at), time))}` });
     const worst = markedRow(store)?.caseIndex ?? 0;
-    const lines = [{ kind: "head", text: `${number(time)} s` }, line(0, "nominal"), ...(worst > 0 ? [line(worst, "worst")] : [])];
+    const unit = timeUnit(/** @type {any} */ (view.range)[1]);
+    const lines = [{ kind: "head", text: `${number(time / unit.seconds)} ${unit.text}` }, line(0, "nominal"), ...(worst > 0 ? [line(worst, "worst")] : [])];
     return reading.draw(place, lines, { left: picture.left, right: picture.right, ...picture.plots[index] });
   }
 }

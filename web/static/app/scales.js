@@ -56,6 +56,12 @@ export function linearTicks(low, high, count) {
   return ticks;
 }
 
+/** The unit in which a stretch of time reads best. @param {number} span_s */
+export function timeUnit(span_s) {
+  if (span_s >= 0.5) return { text: "s", seconds: 1 };
+  return span_s >= 0.5e-3 ? { text: "ms", seconds: 1e-3 } : { text: "µs", seconds: 1e-6 };
+}
+
 /** 1, 2, 2.5 or 5 times a power of ten, at least `rough`. @param {number} rough */
 export function niceStep(rough) {
   const power = 10 ** Math.floor(Math.log10(rough));
