@@ -13,6 +13,7 @@ from engine.loop.isolation import TURN, isolated, turns
 from engine.loop.sections import BoolArray
 from engine.model.factored import FloatArray
 
+_QUIET = 1e-2
 LISTED_AT_MOST = 400
 """Phase crossings with dead time have no end; per case this many are computed."""
 
@@ -61,9 +62,10 @@ def find_crossings(samples: Sampled) -> Found:
 
 
 def _end_of_phase_search(samples: Sampled) -> tuple[FloatArray, BoolArray]:
-    """Where the search for phase crossings stops: with dead time, where |L| stays too small to matter.
+    """Where the search for phase crossings stops, and whether LISTED_AT_MOST cut off what may matter.
 
-    That is below 1/100 and below what the first crossing with |L| < 1 already shows.
+    With dead time: where |L| stays below 1/100 for good and below what the first crossing with |L| < 1 shows, or where
+    `reach` says that no later crossing can be worse.
     """
     end = samples.reach.phase_high
     delay = samples.loop.dead_time_s
@@ -71,28 +73,30 @@ def _end_of_phase_search(samples: Sampled) -> tuple[FloatArray, BoolArray]:
     if not delay.any():
         return end, cut
     end = end.copy()
-    nodes = samples.nodes
-    omega = nodes.omega_rad_s
-    step = np.diff(np.log(omega))
     for case in np.nonzero(delay)[0].tolist():
-        gain = nodes.gain[case]
-        rise = np.minimum(nodes.gain_slope[1][case] * step + gain[:-1], gain[1:] - nodes.gain_slope[0][case] * step)
-        top = np.maximum(np.maximum(gain[:-1], gain[1:]), rise)
-        ceiling = np.maximum.accumulate(top[::-1])[::-1]
-        level = np.floor(turns(nodes.phase[case]))
-        small = np.maximum(gain[:-1], gain[1:]) < 0
-        first = np.nonzero((level[1:] != level[:-1]) & small)[0]
-        limit = math.log(1e-2)
-        if len(first):
-            limit = min(limit, float(min(gain[first[0]], gain[first[0] + 1])))
-        quiet = np.nonzero(ceiling < limit)[0]
-        last = max(float(samples.reach.phase_high[case]), 0.0)
-        if len(quiet):
-            end[case] = min(last, float(omega[quiet[0]]))
-        else:
-            # One full turn beyond the point from which the gain is monotone: the crossing there outdoes all later ones.
-            end[case] = last + 2.0 * TURN / delay[case]
-        most = LISTED_AT_MOST * TURN / delay[case]
-        if end[case] > most:
-            end[case], cut[case] = most, True
+        enough = float(end[case])
+        quiet = _quiet_from(samples, case)
+        most = LISTED_AT_MOST * TURN / float(delay[case])
+        wanted = enough if quiet is None else quiet
+        end[case] = min(wanted, most)
+        cut[case] = end[case] < min(wanted, enough)
     return end, cut
+
+
+def _quiet_from(samples: Sampled, case: int) -> float | None:
+    """Lowest node from which on |L| is proven too small to matter; None where no node is high enough to tell."""
+    nodes = samples.nodes
+    omega, gain = nodes.omega_rad_s, nodes.gain[case]
+    low, high = nodes.gain_slope[0][case], nodes.gain_slope[1][case]
+    step = np.log(omega[1:] / omega[:-1])
+    ends = np.maximum(gain[:-1], gain[1:])
+    with np.errstate(invalid="ignore"):
+        top = np.fmax(ends, np.minimum(gain[:-1] + high * step, gain[1:] - low * step))
+    ceiling = np.maximum.accumulate(top[::-1])[::-1]
+    level = np.floor(turns(nodes.phase[case]))
+    first = np.nonzero((level[1:] != level[:-1]) & (ends < 0))[0]
+    if not len(first):
+        return None
+    limit = min(math.log(_QUIET), float(min(gain[first[0]], gain[first[0] + 1])))
+    quiet = np.nonzero(ceiling < limit)[0]
+    return float(omega[quiet[0]]) if len(quiet) else None

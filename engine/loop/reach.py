@@ -28,7 +28,10 @@ class Reach:
     gain_high: FloatArray
     phase_low: FloatArray
     phase_high: FloatArray
-    """With dead time: where the gain has become monotone; the phase goes on crossing."""
+    """With dead time the phase goes on crossing: where the gain has become monotone and one more crossing has come.
+
+    If that one has |L| < 1, it has the largest |L| of all later ones.
+    """
     smallest: FloatArray
     """Size of the smallest root other than 0; 1 where there is none."""
     largest: FloatArray
@@ -83,7 +86,10 @@ def reach_of(model: Sections) -> Reach:
         gain_low=np.minimum(smallest * gain_low, near),
         gain_high=gain_high_at,
         phase_low=smallest * _first_rules(low_sums[0::2], count + lag, _on_level(phase_zero), plain_low),
-        phase_high=np.where(delayed, gain_high_at, phase_high),
+        # There the rational part turns by less than a quarter any more: two turns of the dead time cross the level.
+        phase_high=np.where(
+            delayed, gain_high_at + 4.0 * math.pi / np.where(delayed, model.dead_time_s, 1.0), phase_high
+        ),
         closed_low=smallest * np.where(model.integrators == 0, _gap(model.log_gain, phase_zero), 1.0),
         closed_high=np.maximum(
             largest / np.where(relative_degree == 0, _gap(log_high_gain, phase_infinite), 1.0),
