@@ -52,14 +52,17 @@ function drawPlot(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Pictur
   pen.lineJoin = "round";
   for (const curve of plot.curves) {
     const { color, width, dash } = look[curve.kind];
-    const xs = pixels(curve.xs, plot.x, left, right, logarithmic);
+    const across = pixels(curve.xs, plot.x, left, right, logarithmic);
     pen.beginPath();
     if (curve.low && curve.high) {
-      outline(pen, xs, curve.low, curve.high, y);
+      // Up along the high side, back along the low one.
+      follow(pen, across, curve.high, y, 1);
+      follow(pen, across, curve.low, y, -1);
+      pen.closePath();
       pen.fillStyle = color;
       pen.fill();
     } else {
-      trace(pen, xs, /** @type {ArrayLike<number>} */ (curve.ys), y, false);
+      follow(pen, across, /** @type {ArrayLike<number>} */ (curve.ys), y, 1);
       pen.strokeStyle = color;
       pen.lineWidth = width;
       pen.setLineDash(dash);
@@ -71,44 +74,46 @@ function drawPlot(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Pictur
 
 // Values far outside would make the rasteriser work for nothing, and infinities break a path.
 const FAR_PX = 4000;
+// Samples crowd where modes are sharp and at the start of a response; a step smaller than this is not seen.
+const NEAR_PX = 0.7;
 
-function trace(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Float64Array} */ xs, /** @type {ArrayLike<number>} */ ys,
-  /** @type {import("./scales.js").Scale} */ y, /** @type {boolean} */ joined) {
-  let down = joined;
-  for (let at = 0; at < xs.length; at += 1) {
+/** @typedef {{px: Float64Array, first: number, last: number}} Across  `first` to `last` cover what is in sight */
+
+/** Forwards as a new path, backwards as the rest of one. */
+function follow(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Across} */ { px, first, last }, /** @type {ArrayLike<number>} */ ys,
+  /** @type {import("./scales.js").Scale} */ y, /** @type {1 | -1} */ way) {
+  let down = way === -1;
+  let [lastX, lastY] = [NaN, NaN];
+  for (let at = way === 1 ? first : last; at >= first && at <= last; at += way) {
     const value = ys[at];
     if (value !== value) {
-      down = joined;
+      down = way === -1;
       continue;
     }
     const py = Math.max(-FAR_PX, Math.min(FAR_PX, y.start + (value - y.from) * y.perUnit));
-    if (down) pen.lineTo(xs[at], py);
-    else pen.moveTo(xs[at], py);
+    if (down && Math.abs(px[at] - lastX) < NEAR_PX && Math.abs(py - lastY) < NEAR_PX) continue;
+    if (down) pen.lineTo(px[at], py);
+    else pen.moveTo(px[at], py);
+    [lastX, lastY] = [px[at], py];
     down = true;
   }
 }
 
-function outline(/** @type {CanvasRenderingContext2D} */ pen, /** @type {Float64Array} */ xs, /** @type {Float32Array} */ low,
-  /** @type {Float32Array} */ high, /** @type {import("./scales.js").Scale} */ y) {
-  trace(pen, xs, high, y, false);
-  for (let at = xs.length - 1; at >= 0; at -= 1) {
-    if (low[at] === low[at]) pen.lineTo(xs[at], Math.max(-FAR_PX, Math.min(FAR_PX, y.start + (low[at] - y.from) * y.perUnit)));
-  }
-  pen.closePath();
-}
-
-let known = /** @type {{xs: ArrayLike<number> | null, key: string, px: Float64Array}} */ ({ xs: null, key: "", px: new Float64Array(0) });
+let known = /** @type {{xs: ArrayLike<number> | null, key: string, across: Across}} */ ({ xs: null, key: "", across: { px: new Float64Array(0), first: 0, last: -1 } });
 
 // All curves of a plot, and both loop plots, share one array of frequencies: convert it once.
 function pixels(/** @type {ArrayLike<number>} */ xs, /** @type {[number, number]} */ range, /** @type {number} */ left,
   /** @type {number} */ right, /** @type {boolean} */ logarithmic) {
   const key = `${range[0]}|${range[1]}|${left}|${right}|${logarithmic}`;
-  if (known.xs === xs && known.key === key) return known.px;
+  if (known.xs === xs && known.key === key) return known.across;
   const px = new Float64Array(xs.length);
   const perUnit = (right - left) / (range[1] - range[0]);
+  let [first, last] = [0, px.length - 1];
   for (let at = 0; at < px.length; at += 1) {
     px[at] = left + ((logarithmic ? Math.log10(xs[at]) : xs[at]) - range[0]) * perUnit;
+    if (px[at] < left) first = at;
+    if (px[at] > right && at < last) last = at;
   }
-  known = { xs, key, px };
-  return px;
+  known = { xs, key, across: { px, first, last } };
+  return known.across;
 }

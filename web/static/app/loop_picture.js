@@ -48,7 +48,7 @@ export function curvesFor(store, name) {
 /** The first step that leaves the labels room. @returns {Tick[]} */
 function ticksEvery(/** @type {[number, number]} */ [low, high], /** @type {{top: number, bottom: number}} */ span,
   /** @type {number[]} */ steps) {
-  const room = (span.bottom - span.top) / 20;
+  const room = (span.bottom - span.top) / 24;
   const step = steps.find((one) => (high - low) / one <= room) ?? steps[steps.length - 1];
   const first = Math.ceil(low / step - 1e-9);
   return Array.from({ length: Math.floor(high / step + 1e-9) - first + 1 }, (_, index) => (first + index) * step)

@@ -78,7 +78,7 @@ export function responses(root, store) {
     titles.draw(geometry);
     set(unstable, { x: geometry.left + 8, y: geometry.plots[0].bottom - 10, text: unstableWords(store.lastGood.assessment.cases) });
     const unit = timeUnit(/** @type {any} */ (view.range)[1]).text;
-    units.forEach((node, index) => set(node, { x: geometry.right, y: geometry.plots[index].bottom + 15, text: unit }));
+    units.forEach((node, index) => set(node, { x: geometry.right, y: geometry.plots[index].bottom + 12, text: unit }));
     mark.draw(picture);
     words.place(2, geometry.plots[2].bottom + 4);
     drawReading(picture);

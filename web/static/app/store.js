@@ -12,6 +12,8 @@
  */
 
 const HISTORY_LIMIT = 200;
+/** How long a move waits for its own frame before it is told without it. */
+const TOGETHER_MS = 30;
 
 const FIRST_UI = {
   unit: "rad/s",
@@ -44,6 +46,7 @@ export class Store extends EventTarget {
   #past = /** @type {Step[]} */ ([]);
   #future = /** @type {Step[]} */ ([]);
   #seq = 0;
+  #untold = 0;
   /** The crossover that was asked for, until the server has answered with its gain. @type {Aim | null} */
   aim = null;
   #send = /** @type {(request: {seq: number, design: Design, aim?: Aim}) => void} */ (() => {});
@@ -86,7 +89,10 @@ export class Store extends EventTarget {
     if (!this.holding || !this.design) return;
     const next = change(this.design);
     if (next === this.design && !more.aim) return;
-    this.#show(next, more.aim);
+    this.design = next;
+    this.ask(more.aim);
+    // Handles and curves are drawn together, in one go: two drawings a move would cost the pace of both.
+    this.#untold ||= window.setTimeout(() => this.#tellDesign(), TOGETHER_MS);
   }
 
   /** The hand opens: what was moved becomes one step. */
@@ -94,6 +100,7 @@ export class Store extends EventTarget {
     const held = this.holding;
     if (!held) return;
     this.holding = null;
+    if (this.#untold) this.#tellDesign();
     // A gain that the server still has to choose is part of the step.
     if (held.design !== this.design || this.aim) this.#record(held.label, held.design);
     this.#tell("holding", { held: false, label: held.label });
@@ -201,6 +208,7 @@ export class Store extends EventTarget {
     this.frame = frame;
     if (frame.ok) this.lastGood = frame;
     if (this.aim && frame.seq === this.#seq) this.#takeGain(frame);
+    if (this.#untold) this.#tellDesign();
     this.#tell("frame", frame);
   }
 
@@ -209,7 +217,7 @@ export class Store extends EventTarget {
     this.aim = null;
     if (!ok || gain === undefined || design.compensator.gain === gain) return;
     this.design = { ...design, compensator: { ...design.compensator, gain } };
-    this.#tell("design", { settled: true });
+    this.#tellDesign();
   }
 
   setConnection(/** @type {"open" | "lost"} */ state) {
@@ -248,7 +256,13 @@ export class Store extends EventTarget {
   #show(/** @type {Design} */ design, /** @type {Aim | undefined} */ aim = undefined) {
     this.design = design;
     this.ask(aim);
-    this.#tell("design", { settled: false });
+    this.#tellDesign();
+  }
+
+  #tellDesign() {
+    clearTimeout(this.#untold);
+    this.#untold = 0;
+    this.#tell("design");
   }
 
   #tell(/** @type {string} */ type, /** @type {any} */ detail = null) {
