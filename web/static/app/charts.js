@@ -28,7 +28,7 @@ import { zoomWords } from "./zoom_words.js";
 
 /** @param {HTMLElement} root @param {import("./store.js").Store} store @param {any} pace */
 export function charts(root, store, pace) {
-  const stage = pictureStage(root, store, "Loop gain and phase over frequency");
+  const stage = pictureStage(root, store, "Loop gain and phase over frequency", () => paint());
   const scene = new Scene(store);
   const ranges = new LoopRanges(store);
   const lit = { grasp: /** @type {Grasp | null} */ (null), how: "none" };
@@ -49,23 +49,19 @@ export function charts(root, store, pace) {
 
   for (const type of ["design", "frame", "ui", "pinned", "holding", "connection", "theme"]) store.addEventListener(type, paint);
   store.addEventListener("loaded", () => ranges.startAnew());
-  new ResizeObserver(paint).observe(root);
 
   function draw() {
-    if (!store.design || !store.lastGood) return stage.node.classList.add("is-empty");
+    if (!store.design || !store.lastGood || !stage.size.width) return stage.node.classList.add("is-empty");
     stage.node.classList.remove("is-empty");
     const lanes = (store.design.compensator.stages ?? []).length + 1;
-    const geometry = chartGeometry(root.clientWidth, root.clientHeight, lanes);
+    const geometry = chartGeometry(stage.size.width, stage.size.height, lanes);
     ranges.follow(stage.frozen);
     scene.renew(geometry, ranges.now());
     const picture = loopPicture(store, geometry, ranges.now());
     stage.draw(picture, pictureKey(store, picture, markedRow(store)?.caseIndex));
-    set(stage.overlay, { width: geometry.width, height: geometry.height });
-    stage.node.style.height = `${geometry.height}px`;
-    stage.node.classList.toggle("is-stale", store.frame?.ok === false);
+    stage.dress(geometry.width, geometry.height, () => summary(store));
     layers.draw(lit, stage.frozen);
     words.place(8, geometry.railBottom + 4);
-    stage.figure.setAttribute("aria-label", summary(store));
     return undefined;
   }
 }

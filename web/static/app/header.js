@@ -3,6 +3,7 @@
 import { el, textButton } from "./element.js";
 import { icon } from "./icons.js";
 import { fileMenu } from "./file_menu.js";
+import { set } from "./svg.js";
 import { shownTheme } from "./theme.js";
 
 /** @param {HTMLElement} root @param {import("./store.js").Store} store */
@@ -26,9 +27,10 @@ export function header(root, store) {
     undo.draw("undo", store.canUndo, store.undoLabel);
     redo.draw("redo", store.canRedo, store.redoLabel);
     units.draw();
-    pin.setAttribute("aria-pressed", String(Boolean(store.pinned)));
-    pin.setAttribute("title", store.pinned ? "take the pinned reference away" : "keep this design as the pale reference");
-    pin.textContent = store.pinned ? "pinned" : "pin";
+    set(pin, {
+      "aria-pressed": Boolean(store.pinned), text: store.pinned ? "pinned" : "pin",
+      title: store.pinned ? "take the pinned reference away" : "keep this design as the pale reference",
+    });
     theme.draw(shownTheme(store) === "dark" ? "light ground" : "dark ground", true, "", shownTheme(store) === "dark" ? "sun" : "moon");
   }
   for (const type of ["design", "history", "ui", "pinned", "theme"]) store.addEventListener(type, draw);
@@ -38,6 +40,7 @@ export function header(root, store) {
 /** A heading that is a field: type in it, Enter or leaving keeps it. */
 function titleField(/** @type {import("./store.js").Store} */ store) {
   const input = /** @type {HTMLInputElement} */ (el("input", { class: "title-field", "aria-label": "title of the design", autocomplete: "off", spellcheck: "false", maxlength: 120 }));
+  let drawn = /** @type {string | null} */ (null);
   const keep = () => {
     const text = input.value.trim();
     if (store.design && text !== (store.design.title ?? "")) store.edit("change the title", (design) => ({ ...design, title: text }));
@@ -54,6 +57,8 @@ function titleField(/** @type {import("./store.js").Store} */ store) {
     node: input,
     draw() {
       const text = store.design?.title ?? "";
+      if (text === drawn) return;
+      drawn = text;
       if (document.activeElement !== input) input.value = text;
       input.placeholder = "a title for this design";
       // Where the browser cannot size a field by its content.
@@ -68,7 +73,7 @@ function unitSwitch(/** @type {import("./store.js").Store} */ store) {
   return {
     node: el("div", { class: "unit-switch", role: "group", "aria-label": "frequency unit" }, ...buttons),
     draw() {
-      for (const button of buttons) button.setAttribute("aria-pressed", String(button.textContent === store.ui.unit));
+      for (const button of buttons) set(button, { "aria-pressed": button.textContent === store.ui.unit });
     },
   };
 }
@@ -76,11 +81,14 @@ function unitSwitch(/** @type {import("./store.js").Store} */ store) {
 function iconButton(/** @type {string} */ name, /** @type {() => void} */ act) {
   const node = el("button", { type: "button", class: "quiet icon-button", on: { click: act } }, icon(name));
   let shown = name;
+  let said = "";
   return {
     node,
     draw(/** @type {string} */ label, /** @type {boolean} */ usable, /** @type {string} */ more, /** @type {string} */ look = shown) {
-      node.toggleAttribute("disabled", !usable);
       const full = more ? `${label}: ${more}` : label;
+      if (full === said && usable === !node.hasAttribute("disabled") && look === shown) return;
+      said = full;
+      node.toggleAttribute("disabled", !usable);
       node.setAttribute("aria-label", full);
       node.setAttribute("title", full);
       if (look !== shown) node.replaceChildren(icon(look));

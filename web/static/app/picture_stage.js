@@ -6,12 +6,13 @@
 import { el } from "./element.js";
 import { liveLayer } from "./live_layer.js";
 import { settledFigure } from "./settled.js";
-import { svg } from "./svg.js";
+import { set, svg } from "./svg.js";
 
 /** @typedef {import("./loop_picture.js").Picture} Picture */
 
-/** @param {HTMLElement} root @param {import("./store.js").Store} store @param {string} label for screen readers */
-export function pictureStage(root, store, label) {
+/** @param {HTMLElement} root @param {import("./store.js").Store} store @param {string} label for screen readers
+ *  @param {() => void} resized */
+export function pictureStage(root, store, label, resized) {
   const figure = el("div", { class: "figure", role: "img", "aria-label": label });
   const canvas = /** @type {HTMLCanvasElement} */ (el("canvas", { class: "live-curves", hidden: true, "aria-hidden": "true" }));
   const overlay = svg("svg", { class: "overlay" });
@@ -21,13 +22,30 @@ export function pictureStage(root, store, label) {
   const live = liveLayer(canvas);
   let drawnKey = "";
   let moving = false;
+  let tall = 0;
+  const size = { width: 0, height: 0 };
+  // Asking an element for its size in mid-drawing makes the browser lay the page out there and then.
+  new ResizeObserver(() => {
+    size.width = root.clientWidth;
+    size.height = root.clientHeight;
+    resized();
+  }).observe(root);
   store.addEventListener("theme", () => {
     live.forgetLook();
     drawnKey = "";
   });
 
   return {
-    node, overlay, figure,
+    node, overlay, size,
+    /** Its height, and words for what it shows; these wait until the hand rests. @param {number} width
+     *  @param {number} height @param {() => string} words */
+    dress(width, height, words) {
+      set(overlay, { width, height });
+      if (tall !== height) node.style.height = `${height}px`;
+      tall = height;
+      node.classList.toggle("is-stale", store.frame?.ok === false);
+      if (!this.frozen) set(figure, { "aria-label": words() });
+    },
     /** True while axes must stand still: something is held, or its last frame is still on the way. */
     get frozen() {
       return Boolean(store.holding) || (moving && store.waiting && store.connection === "open");

@@ -2,6 +2,7 @@
 
 import { el, setText, textButton } from "./element.js";
 import { joinUnit, tick } from "./format.js";
+import { set } from "./svg.js";
 
 // From the edge of the column: a narrow plot has no room for title, unit and scenario in one line.
 const TITLE_LEFT = 16;
@@ -50,7 +51,7 @@ function commandTitle(/** @type {import("./store.js").Store} */ store) {
     update(/** @type {any} */ signals, /** @type {any} */ scenario) {
       const shape = scenario?.command?.shape ?? "step";
       setText(title.unit, unitOf(signals?.output));
-      for (const button of shapes) button.setAttribute("aria-pressed", String(button.textContent === shape));
+      for (const button of shapes) set(button, { "aria-pressed": button.textContent === shape });
     },
   };
 }

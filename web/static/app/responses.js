@@ -19,7 +19,7 @@ import { zoomWords } from "./zoom_words.js";
 
 /** @param {HTMLElement} root @param {import("./store.js").Store} store */
 export function responses(root, store) {
-  const stage = pictureStage(root, store, "Responses over time");
+  const stage = pictureStage(root, store, "Responses over time", () => paint());
   const view = new View();
   const paint = onNextFrame(draw);
   const state = { geometry: responseGeometry(300, 600), values: /** @type {[number, number][]} */ ([]), drawn: "", hover: /** @type {any} */ (null) };
@@ -48,7 +48,6 @@ export function responses(root, store) {
     view.forget();
     state.values = [];
   });
-  new ResizeObserver(paint).observe(root);
 
   function follow() {
     const { assessment, arrays } = /** @type {any} */ (store.lastGood);
@@ -65,15 +64,13 @@ export function responses(root, store) {
   }
 
   function draw() {
-    if (!store.design || !store.lastGood) return;
-    state.geometry = responseGeometry(root.clientWidth, root.clientHeight);
+    if (!store.design || !store.lastGood || !stage.size.width) return;
+    state.geometry = responseGeometry(stage.size.width, stage.size.height);
     follow();
     const { geometry, values } = state;
     const picture = responsePicture(store, geometry, { time: /** @type {[number, number]} */ (view.range), values });
     stage.draw(picture, pictureKey(store, picture, markedRow(store)?.caseIndex));
-    set(stage.overlay, { width: geometry.width, height: geometry.height });
-    stage.node.style.height = `${geometry.height}px`;
-    stage.node.classList.toggle("is-stale", store.frame?.ok === false);
+    stage.dress(geometry.width, geometry.height, () => summary(store));
     surface.draw();
     titles.draw(geometry);
     set(unstable, { x: geometry.left + 8, y: geometry.plots[0].bottom - 10, text: unstableWords(store.lastGood.assessment.cases) });
@@ -82,7 +79,6 @@ export function responses(root, store) {
     mark.draw(picture);
     words.place(2, geometry.plots[2].bottom + 4);
     drawReading(picture);
-    stage.figure.setAttribute("aria-label", summary(store));
   }
 
   function drawReading(/** @type {import("./loop_picture.js").Picture} */ picture) {

@@ -26,6 +26,7 @@ export function show(node, shown) {
   /** @type {any} */ (node).style.display = shown ? "" : "none";
 }
 
+let family = "";
 const measuring = /** @type {CanvasRenderingContext2D} */ (document.createElement("canvas").getContext("2d"));
 const widths = /** @type {Map<string, number>} */ (new Map());
 
@@ -35,7 +36,7 @@ export function textWidth(text, size, weight = 400) {
   const key = `${weight}|${size}|${text}`;
   const known = widths.get(key);
   if (known !== undefined) return known;
-  const family = getComputedStyle(document.documentElement).getPropertyValue("--font");
+  family ||= getComputedStyle(document.documentElement).getPropertyValue("--font");
   measuring.font = `${weight} ${size}px ${family}`;
   const width = measuring.measureText(text).width;
   if (widths.size > 2000) widths.clear();
