@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from engine.loop.frequency import CaseFrequency, read_frequency
+from engine.loop.gain_phase import slope
 from engine.loop.loop_set import LoopSet
+from engine.loop.sections import sections_of
 from engine.model.factored import Factored
 from tests.loop.loops import UNITY, factored, pair, read
 
@@ -36,6 +40,13 @@ def models(draw, longest: int = 4, dead_time: bool = False) -> Factored:
     return factored(gain, zeros, poles, draw(CORNERS) / 1e4 if dead_time else 0.0)
 
 
+def well_conditioned(case: CaseFrequency, *parts: Factored) -> bool:
+    """No gain crossover at which |L| hardly moves: there the last digit of a gain moves the crossover far."""
+    sections = sections_of([math.prod(parts[1:], start=parts[0])]).spread()
+    crossings = np.array([[point.rad_s for point in case.gain_crossovers]])
+    return bool(np.all(np.abs(slope(sections, crossings).real) > 1e-2))
+
+
 def assert_same(a: CaseFrequency, b: CaseFrequency, time_scale: float = 1.0, tolerance: float = 1e-9) -> None:
     """All readings alike, with frequencies multiplied by time_scale."""
     assert a.stable == b.stable
@@ -61,6 +72,7 @@ def assert_same(a: CaseFrequency, b: CaseFrequency, time_scale: float = 1.0, tol
 def test_an_all_one_stage_changes_nothing(model):
     hidden = factored(1.0, [-7.0], [-7.0])
     plain, staged = read(model), read(model, hidden)
+    assume(well_conditioned(plain, model))
     assert plain.stable == staged.stable
     for name in ("phase_margin_deg", "gain_margin_db", "delay_margin_s", "peak_sensitivity", "crossover_rad_s"):
         first, second = plain.readings[name], staged.readings[name]
@@ -73,6 +85,7 @@ def test_an_all_one_stage_changes_nothing(model):
 @given(models(2), models(3, dead_time=True))
 def test_plant_and_compensator_may_change_places(a, b):
     one, other = read(a, b), read(b, a)
+    assume(well_conditioned(one, a, b))
     # The effort C·S is the one reading that tells them apart.
     del one.readings["effort_gain_db"], other.readings["effort_gain_db"]
     assert_same(one, other)
@@ -84,8 +97,10 @@ def test_scaling_time_scales_every_frequency(model, power):
     # A power of two scales without rounding.
     k = 2.0**power
     scaled = Factored(model.gain * k**model.relative_degree, model.zeros * k, model.poles * k, model.dead_time_s / k)
+    case = read(model)
+    assume(well_conditioned(case, model))
     # The lattice of the grid does not scale along: extremes differ by their own rounding only.
-    assert_same(read(model), read(scaled), k)
+    assert_same(case, read(scaled), k)
 
 
 @settings(deadline=None, max_examples=40)
@@ -93,6 +108,7 @@ def test_scaling_time_scales_every_frequency(model, power):
 def test_a_case_reads_alike_alone_and_in_company(plants, compensator):
     together = read_frequency(LoopSet(tuple(plants), compensator)).cases
     for plant, found in zip(plants, together, strict=True):
+        assume(well_conditioned(found, plant, compensator))
         assert_same(read(plant, compensator), found)
 
 
@@ -114,8 +130,7 @@ def test_the_cache_changes_no_bit(plant, compensator):
 def test_margins_are_where_the_loop_loses_its_stability(model, share):
     """Less than each margin keeps the loop stable, the margin itself and a little more does not."""
     case = read(model)
-    if not case.stable:
-        return
+    assume(case.stable and well_conditioned(case, model))
     for name, sign in (("gain_margin_db", 1.0), ("gain_reduction_margin_db", -1.0)):
         reading = case.readings[name]
         if reading.value is None or reading.value < 1e-3:
@@ -125,7 +140,7 @@ def test_margins_are_where_the_loop_loses_its_stability(model, share):
     delay = case.readings["delay_margin_s"]
     if delay.value is not None and delay.value > 1e-9:
         kept = Factored(model.gain, model.zeros, model.poles, delay.value * share)
-        lost = Factored(model.gain, model.zeros, model.poles, delay.value * 1.0001)
+        lost = Factored(model.gain, model.zeros, model.poles, delay.value * (1 + 1e-7))
         assert read(kept).stable
         assert not read(lost).stable
 
