@@ -125,12 +125,14 @@ def test_the_cache_changes_no_bit(plant, compensator):
     assert first.cases[0].readings == again.cases[0].readings
 
 
-@settings(deadline=None, max_examples=60)
+@settings(deadline=None, max_examples=150)
 @given(models(), st.floats(0.05, 0.95))
 def test_margins_are_where_the_loop_loses_its_stability(model, share):
     """Less than each margin keeps the loop stable, the margin itself and a little more does not."""
     case = read(model)
-    assume(case.stable and well_conditioned(case, model))
+    # Not assume(): an unstable loop is no reason to draw another, there are enough stable ones.
+    if not (case.stable and well_conditioned(case, model)):
+        return
     for name, sign in (("gain_margin_db", 1.0), ("gain_reduction_margin_db", -1.0)):
         reading = case.readings[name]
         if reading.value is None or reading.value < 1e-3:
