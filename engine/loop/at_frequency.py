@@ -15,6 +15,7 @@ from engine.loop.loop_set import LoopSet
 from engine.loop.margins import DB
 from engine.loop.narrow import narrow_places
 from engine.loop.polish import Tasks, joined_tasks, polished
+from engine.loop.ripples import ripple_tasks
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
 
@@ -156,7 +157,7 @@ def _candidates(ready: Prepared, kind: Quantity, row: FloatArray, segment: _Segm
     left.append(np.maximum(before[held], segment.low))
     right.append(np.minimum(after[held], segment.high))
     all_cases = np.concatenate(cases)
-    return Tasks(
+    found = Tasks(
         np.full(len(all_cases), int(kind), dtype=np.int64),
         all_cases,
         np.concatenate(left),
@@ -166,6 +167,15 @@ def _candidates(ready: Prepared, kind: Quantity, row: FloatArray, segment: _Segm
         np.full(len(all_cases), sign),
         np.full(len(all_cases), tilt),
     )
+    if kind in (Quantity.LOOP, Quantity.PHASE):
+        return found
+    ends = log_level(_points(ready, kind, case), np.tile([segment.low, segment.high], count))
+    height = sign * (ends - tilt * np.log(np.tile([segment.low, segment.high], count)))
+    best = height.reshape(count, 2).max(axis=1)
+    if len(inside):
+        best = np.maximum(best, (sign * (row[:, inside] - tilt * np.log(omega[inside]))).max(axis=1))
+    band = (segment.low, segment.high)
+    return joined_tasks(found, ripple_tasks(ready.samples, (kind,), best[None, :], sign, tilt, band))
 
 
 def _sampled_row(ready: Prepared, kind: Quantity) -> FloatArray:

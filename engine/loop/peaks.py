@@ -14,6 +14,7 @@ from engine.loop.grid import Sampled
 from engine.loop.limits import Limits, limits_of
 from engine.loop.narrow import narrow_places
 from engine.loop.polish import Tasks, joined_tasks, polished
+from engine.loop.ripples import ripple_tasks
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
 
@@ -41,13 +42,14 @@ def find_peaks(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Peaks:
     rows = _sampled_levels(samples)
     cases = rows.shape[1]
     limits = limits_of(samples)
+    best = np.maximum(limits.at_zero, limits.at_infinity)
     tasks = joined_tasks(
         _grid_candidates(samples, rows),
         _narrow_candidates(samples, found, roots, rows),
+        ripple_tasks(samples, PEAKS, np.maximum(rows.max(axis=2), best)),
         _bandwidth_tasks(samples, rows[1], limits),
     )
     omega, level = polished(samples, tasks)
-    best = np.maximum(limits.at_zero, limits.at_infinity)
     at = np.where(limits.at_zero >= limits.at_infinity, 0.0, math.inf)
     peak = np.isnan(tasks.level)
     # Ordered by value, the greatest of each row is written last. A supremum that the limit reaches as well

@@ -148,6 +148,24 @@ def test_needle_of_a_shifted_mode(gain):
     assert number(case, "peak_sensitivity") >= np.max(np.abs(1 / (1 + L))) * (1 - 1e-10)
 
 
+# C·S with a lead and a long dead time peaks on one of very many ripples, far denser than any grid. 4·10⁶
+# samples around the envelope's top show which.
+def test_a_peak_among_ripples():
+    plant, lead = factored(0.4, [], [-0.4], 3.0), factored(30.0, [-20.0, -30.0], [-300.0, -100.0])
+    case = read(plant, lead)
+    assert case.stable
+    omega = np.linspace(3000.0, 13000.0, 4_000_001)
+    s = 1j * omega
+    C = 30.0 * (s + 20.0) * (s + 30.0) / ((s + 300.0) * (s + 100.0))
+    S = 1 / (1 + C * 0.4 / (s + 0.4) * np.exp(-3.0 * s))
+    want = 20 * np.log10(np.max(np.abs(C * S)))
+    assert want > 20 * np.log10(30.0)
+    assert want - 1e-12 <= number(case, "effort_gain_db") <= want + 1e-6
+    at = case.readings["effort_gain_db"].at_rad_s
+    assert at is not None
+    assert at == pytest.approx(omega[np.argmax(np.abs(C * S))], abs=5e-3)
+
+
 # Lowest ω with |T| = |T(0)|/√2. By hand: T = 1/(s+1) → 1; L = 1/s. T(0) = 0 has none.
 def test_bandwidth():
     assert number(read(factored(1.0, [], [0])), "bandwidth_rad_s") == pytest.approx(1.0, rel=1e-14)

@@ -1,0 +1,133 @@
+"""Extremes among the ripples that dead time makes where the grid is too coarse to show them.
+
+At high frequencies e^{−jωθ} turns L through all angles between two nodes while |L| hardly changes. There |S| runs
+between 1/(1+|L|) and 1/(1−|L|); the extreme lies at one of the passages of the negative (for a least value, the
+positive) real axis next to the extreme of that envelope, which the grid does show.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from engine.loop.closed_loop_gain import Quantity
+from engine.loop.gain_phase import gain_and_phase, slope
+from engine.loop.grid import Sampled
+from engine.loop.polish import Tasks
+from engine.loop.sections import IntArray, Sections
+from engine.model.factored import FloatArray
+
+_COARSE = 0.7
+"""Turn of e^{−jωθ} from node to node [rad] from which on the samples no longer show the ripples."""
+_ROUNDS = 14
+_NEIGHBOURS = np.arange(-2, 3)
+
+
+def ripple_tasks(
+    samples: Sampled,
+    quantities: tuple[Quantity, ...],
+    best: FloatArray,
+    sign: float = 1.0,
+    tilt: float = 0.0,
+    band: tuple[float, float] = (0.0, math.inf),
+) -> Tasks:
+    """Ripples that may beat `best`.
+
+    best: (q, c) greatest sampled sign·(quantity − tilt·ln ω) of each quantity and case.
+    """
+    omega = samples.nodes.omega_rad_s
+    delay = samples.loop.dead_time_s
+    inside = np.nonzero((omega >= band[0]) & (omega <= band[1]))[0]
+    rows, cases, columns = [], [], []
+    for item in np.nonzero(delay > 0)[0].tolist() if len(inside) > 2 else []:
+        coarse = inside[1:][float(delay[item]) * np.diff(omega[inside]) > _COARSE]
+        if not len(coarse):
+            continue
+        gain = samples.nodes.gain[item, coarse]
+        for row, quantity in enumerate(quantities):
+            height = sign * (_envelope(samples, quantity, gain, coarse, sign) - tilt * np.log(omega[coarse]))
+            around = np.pad(height, 1, constant_values=-math.inf)
+            top = (height >= around[:-2]) & (height >= around[2:]) & (height > best[row, item])
+            found = coarse[top]
+            rows += [row] * len(found)
+            cases += [item] * len(found)
+            columns += found.tolist()
+    kinds = np.array([int(quantities[row]) for row in rows], dtype=np.int64)
+    case, column = np.array(cases, dtype=np.int64), np.array(columns, dtype=np.int64)
+    if not len(case):
+        nothing = np.empty(0)
+        return Tasks(kinds, case, nothing, nothing, nothing, nothing, nothing, nothing)
+    left = np.maximum(omega[np.maximum(column - 1, 0)], band[0])
+    right = np.minimum(omega[np.minimum(column + 1, len(omega) - 1)], band[1])
+    own = samples.loop.at(case)
+    centre = _envelope_top(samples, own, kinds, left, right, sign, tilt)
+    return _passages(own, kinds, case, centre, sign, tilt, band)
+
+
+def _envelope(samples: Sampled, quantity: Quantity, gain: FloatArray, columns: IntArray, sign: float) -> FloatArray:
+    """ln of the envelope of a quantity where |L| < 1; no extreme is to be found by it elsewhere."""
+    size = np.exp(np.minimum(gain, 0.0))
+    with np.errstate(divide="ignore"):
+        level: FloatArray = -np.log1p(-sign * np.minimum(size, 1.0 - 1e-12))
+    if quantity == Quantity.COMPLEMENTARY:
+        level = level + gain
+    elif quantity == Quantity.EFFORT:
+        level = level + samples.compensator_gain[0, columns]
+    elif quantity == Quantity.LOAD:
+        level = level + gain - samples.compensator_gain[0, columns]
+    elif quantity == Quantity.DISK:
+        level = level + np.log1p(sign * size)
+    return np.where(gain < 0, level, -sign * math.inf)
+
+
+def _envelope_top(
+    samples: Sampled, own: Sections, kinds: IntArray, left: FloatArray, right: FloatArray, sign: float, tilt: float
+) -> FloatArray:
+    """Where each envelope is extreme, by bisection of its slope: as close as one ripple needs."""
+    for _ in range(_ROUNDS):
+        middle = np.sqrt(left) * np.sqrt(right)
+        gain = gain_and_phase(own, middle)[0]
+        rate = slope(own, middle).real
+        rate_c = slope(samples.compensator, middle).real
+        size = np.exp(np.minimum(gain, -1e-12))
+        rise = sign * size / (1.0 - sign * size) * rate
+        rise = rise + np.where((kinds == Quantity.COMPLEMENTARY) | (kinds == Quantity.LOAD), rate, 0.0)
+        rise = rise + np.where(kinds == Quantity.EFFORT, rate_c, np.where(kinds == Quantity.LOAD, -rate_c, 0.0))
+        rise = rise + np.where(kinds == Quantity.DISK, sign * size / (1.0 + sign * size) * rate, 0.0)
+        onward = sign * (rise - tilt) > 0
+        left, right = np.where(onward, middle, left), np.where(onward, right, middle)
+    return np.sqrt(left) * np.sqrt(right)
+
+
+def _passages(
+    own: Sections,
+    kinds: IntArray,
+    case: IntArray,
+    centre: FloatArray,
+    sign: float,
+    tilt: float,
+    band: tuple[float, float],
+) -> Tasks:
+    """The passages of the real axis on both sides of each centre, each with half a ripple around it."""
+    phase = gain_and_phase(own, centre)[1]
+    rate = slope(own, centre).imag / centre
+    level = math.pi if sign > 0 else 0.0
+    nearest = level + 2.0 * math.pi * np.rint((phase - level) / (2.0 * math.pi))
+    target = nearest[:, None] + 2.0 * math.pi * _NEIGHBOURS
+    at = centre[:, None] + (target - phase[:, None]) / rate[:, None]
+    half = np.broadcast_to(2.8 / np.abs(rate)[:, None], at.shape)
+    kept = (at > band[0]) & (at < band[1]) & (at > half)
+    index = np.nonzero(kept)[0]
+    start, half = at[kept], half[kept]
+    count = len(index)
+    return Tasks(
+        kinds[index],
+        case[index],
+        np.maximum(start - half, band[0]),
+        start,
+        np.minimum(start + half, band[1]),
+        np.full(count, math.nan),
+        np.full(count, sign),
+        np.full(count, tilt),
+    )
