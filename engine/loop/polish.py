@@ -65,8 +65,14 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
         with np.errstate(invalid="ignore"):
             still = np.where(to_level, np.abs(move) < 1e-10, np.abs(slope * move) < 1e-13)
         middle = np.where(still, omega, np.sqrt(left) * np.sqrt(right))
+        # A step past an end that was never tried goes to that end: if the slope still points out of the bracket
+        # there, the extreme is a neighbour's and halving towards the end would only confirm it slowly.
+        past = outside & ~still & ~to_level & np.isfinite(move)
+        middle = np.where(past & onward & (right == tasks.right), right, middle)
+        middle = np.where(past & ~onward & (left == tasks.left), left, middle)
         after = np.where(outside, np.clip(middle, left, right), after)
-        done = still | (right - left <= np.where(to_level, 1e-14, 1e-10) * omega)
+        at_end = (onward & (omega == tasks.right)) | (~onward & (omega == tasks.left))
+        done = still | (right - left <= np.where(to_level, 1e-14, 1e-10) * omega) | (at_end & ~to_level)
         omega = after
         if done.all():
             break
