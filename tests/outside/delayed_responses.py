@@ -65,7 +65,9 @@ class DelayedSeries:
                 total += sign * value
                 size = max(size, magnitude)
                 k += 1
-            return total if size * mpf(10) ** (25 - digits) <= abs(total) or size == 0 else None
+            # 25 digits of the value, or 60 decimals where the value itself is (nearly) 0.
+            left = size * mpf(10) ** -digits
+            return total if left * mpf(10) ** 25 <= abs(total) or left <= mpf(10) ** -60 else None
 
     def _term(self, k: int) -> _Term:
         key = (k, mp.dps)
