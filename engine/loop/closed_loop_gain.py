@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from enum import IntEnum
 
@@ -32,6 +33,10 @@ class Quantity(IntEnum):
     """arg L, in place of a logarithm [rad]"""
 
 
+_TURN = 2.0 * math.pi
+_LARGEST = 300.0
+"""ln|L| above which 1/L is all there is to S."""
+
 # Plain numbers: comparing arrays with members of an enumeration is slow.
 _COMPLEMENTARY, _EFFORT, _DISK = int(Quantity.COMPLEMENTARY), int(Quantity.EFFORT), int(Quantity.DISK)
 _LOAD, _LOOP, _PHASE = int(Quantity.LOAD), int(Quantity.LOOP), int(Quantity.PHASE)
@@ -52,6 +57,7 @@ class Points:
     disk: BoolArray
     open_loop: BoolArray
     """(p,) the quantity is L's own gain or phase."""
+    any_disk: bool
     plain: bool
     """No point asks for L itself."""
 
@@ -66,95 +72,74 @@ class Points:
         elif effort.any():
             side = samples.compensator
         open_loop = quantity >= _LOOP
+        disk = quantity == _DISK
         return Points(
             quantity,
             samples.loop.at(case),
             side,
             (load | effort).astype(np.float64),
             quantity == _COMPLEMENTARY,
-            quantity == _DISK,
+            disk,
             open_loop,
+            bool(disk.any()),
             not open_loop.any(),
         )
 
 
-@dataclass(frozen=True, eq=False)
-class ClosedLoop:
-    """Everything about 1 + L at points: W = L or 1/L, whichever is the smaller."""
-
-    log_gain: FloatArray
-    large: BoolArray
-    """|L| > 1."""
-    W: ComplexArray
-    one_plus: ComplexArray
-    """1 + W."""
-    one_minus: ComplexArray
-    """1 − W."""
-
-
-def closed_loop(log_gain: FloatArray, phase: FloatArray) -> ClosedLoop:
-    """1 + L without loss of digits near L = −1, and without overflow for any |L|."""
-    large = log_gain > 0
-    sign = np.where(large, -1.0, 1.0)
-    size = -np.abs(log_gain)
-    angle = sign * phase
-    # 1 + W = 1 − e^(ln|W| + j·(angle ± π)); expm1 keeps the digits that 1 + W would cancel.
-    return ClosedLoop(
-        log_gain,
-        large,
-        np.exp(size + 1j * angle),
-        -np.expm1(size + 1j * _wrapped(angle + np.pi)),
-        -np.expm1(size + 1j * _wrapped(angle)),
-    )
+def sensitivity(log_gain: FloatArray, phase: FloatArray) -> ComplexArray:
+    """S = 1/(1 + L) without loss of digits near L = −1, and without overflow for any |L|."""
+    away = phase + math.pi
+    away = away - _TURN * np.rint(away / _TURN)
+    # 1 + L = 1 − e^(ln|L| + j·away); expm1 keeps the digits that 1 + L would cancel.
+    exponent = np.minimum(log_gain, _LARGEST) + 1j * away
+    with np.errstate(divide="ignore", invalid="ignore"):
+        inverse: ComplexArray = -1.0 / np.expm1(exponent)
+    return inverse
 
 
 def log_level(points: Points, omega_rad_s: FloatArray) -> FloatArray:
     """(p,) natural logarithm of each point's quantity."""
     gain, phase = gain_and_phase(points.loop, omega_rad_s)
-    return _level(points, omega_rad_s, closed_loop(gain, phase), phase)
+    return _level(points, omega_rad_s, gain, phase, sensitivity(gain, phase))
 
 
 def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """ln of each point's quantity, and its first and second derivative in ln ω."""
     gain, phase = gain_and_phase(points.loop, omega_rad_s)
-    state = closed_loop(gain, phase)
     first, second = slope_and_bend(points.loop, omega_rad_s)
-    W, plus, minus = state.W, state.one_plus, state.one_minus
+    S = sensitivity(gain, phase)
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        over, part = 1.0 / plus, W / plus
-        S, T = np.where(state.large, part, over), np.where(state.large, over, part)
-        # d ln q / d ln L and its own derivative.
-        both = plus * minus
-        disk = 2.0 * W / both
-        rate = np.where(points.complementary, S, np.where(points.disk, np.where(state.large, disk, -disk), -T))
-        bend = np.where(points.disk, -disk * (1.0 + W * W) / both, -S * T)
+        # d ln q / d ln L and its own derivative; dT/d ln L = S·T, and (1−L)/(1+L) = S − T.
+        T = 1.0 - S
+        product = S * T
+        rate, bend = np.where(points.complementary, S, -T), -product
+        if points.any_disk:
+            disk = S - T
+            quotient = product / disk
+            rate = np.where(points.disk, -2.0 * quotient, rate)
+            bend = np.where(points.disk, -2.0 * quotient * (disk + 2.0 * quotient), bend)
         if not points.plain:
             rate = np.where(points.open_loop, np.where(points.quantity == _PHASE, -1j, 1.0), rate)
             bend = np.where(points.open_loop, 0.0, bend)
-        rate_first = rate * first
-        slope = rate_first.real
-        curve = (bend * first * first + rate * second).real
+        slope = (rate * first).real
+        curve = (bend * (first * first) + rate * second).real
     if points.side is not None:
         side_first, side_second = slope_and_bend(points.side, omega_rad_s)
         slope = slope + points.has_side * side_first.real
         curve = curve + points.has_side * side_second.real
-    return _level(points, omega_rad_s, state, phase), slope, curve
+    return _level(points, omega_rad_s, gain, phase, S), slope, curve
 
 
-def _level(points: Points, omega_rad_s: FloatArray, state: ClosedLoop, phase: FloatArray) -> FloatArray:
+def _level(points: Points, omega_rad_s: FloatArray, gain: FloatArray, phase: FloatArray, S: ComplexArray) -> FloatArray:
     with np.errstate(divide="ignore", invalid="ignore"):
-        log_plus = np.log(np.abs(state.one_plus))
-        log_minus = np.log(np.abs(state.one_minus))
-        # |S|, and with it |C·S| and |P·S|; |T| where L is large is 1/|1 + 1/L|.
-        level: FloatArray = -log_plus - np.maximum(state.log_gain, 0.0)
-        of_T = -log_plus + np.minimum(state.log_gain, 0.0)
-    level = np.where(points.complementary, of_T, np.where(points.disk, log_minus - log_plus, level))
+        wanted = np.where(points.disk, 2.0 * S - 1.0, S) if points.any_disk else S
+        level: FloatArray = np.log(np.abs(wanted)) + np.where(points.complementary, gain, 0.0)
+    # Where |L| is beyond the range of numbers T is 1 and S is 1/|L|.
+    if gain.max(initial=0.0) > _LARGEST:
+        beyond = np.where(points.complementary | points.disk, 0.0, -gain)
+        level = np.where(gain > _LARGEST, beyond, level)
     if points.side is not None:
         level = level + points.has_side * gain_and_phase(points.side, omega_rad_s)[0]
     if points.plain:
         return level
-    return np.where(points.open_loop, np.where(points.quantity == _PHASE, phase, state.log_gain), level)
-
-
-def _wrapped(angle: FloatArray) -> FloatArray:
-    return angle - 2.0 * np.pi * np.rint(angle / (2.0 * np.pi))
+    return np.where(points.open_loop, np.where(points.quantity == _PHASE, phase, gain), level)

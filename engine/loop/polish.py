@@ -7,7 +7,7 @@ from dataclasses import dataclass, fields
 
 import numpy as np
 
-from engine.loop.closed_loop_gain import Points, level_slope_bend, log_level
+from engine.loop.closed_loop_gain import Points, level_slope_bend
 from engine.loop.grid import Sampled
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
@@ -47,9 +47,10 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
     left, right = tasks.left.copy(), tasks.right.copy()
     to_level = ~np.isnan(tasks.level)
     best_omega, best = omega.copy(), np.full(len(omega), -math.inf)
+    tilted = bool(tasks.tilt.any())
     for _ in range(60):
         level, slope, bend = level_slope_bend(points, omega)
-        height = _height(tasks, level, omega)
+        height = tasks.sign * (level - tasks.tilt * np.log(omega) if tilted else level)
         slope, bend = tasks.sign * (slope - tasks.tilt), tasks.sign * bend
         better = (height > best) | to_level
         best, best_omega = np.where(better, height, best), np.where(better, omega, best_omega)
@@ -63,7 +64,7 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
             outside = ~((after > left) & (after < right))
         # An extreme is settled when the step no longer changes the value; the step itself still squares the error.
         with np.errstate(invalid="ignore"):
-            still = np.where(to_level, np.abs(move) < 1e-10, np.abs(slope * move) < 1e-13)
+            still = np.where(to_level, np.abs(move) < 1e-10, np.abs(slope * move) < 1e-12)
         middle = np.where(still, omega, np.sqrt(left) * np.sqrt(right))
         # A step past an end that was never tried goes to that end: if the slope still points out of the bracket
         # there, the extreme is a neighbour's and halving towards the end would only confirm it slowly.
@@ -76,12 +77,7 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
         omega = after
         if done.all():
             break
-    level = log_level(points, omega)
-    better = (_height(tasks, level, omega) >= best) | to_level
-    omega = np.where(better, omega, best_omega)
-    return omega, np.where(better, level, tasks.sign * best + tasks.tilt * np.log(omega))
-
-
-def _height(tasks: Tasks, level: FloatArray, omega: FloatArray) -> FloatArray:
-    height: FloatArray = tasks.sign * (level - tasks.tilt * np.log(omega))
-    return height
+    # The last step of an extreme changes its value by less than rounding.
+    return np.where(better, omega, best_omega), np.where(
+        to_level, tasks.level, tasks.sign * best + (tasks.tilt * np.log(omega) if tilted else 0.0)
+    )

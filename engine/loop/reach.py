@@ -57,12 +57,9 @@ def reach_of(model: Sections) -> Reach:
     smallest = np.min(np.where(active, size, math.inf), axis=0, initial=math.inf)
     bare = count == 0
     largest, smallest = np.where(bare, 1.0, largest), np.where(bare, 1.0, smallest)
-    with np.errstate(under="ignore"):
-        high_sums = _power_sums(model.root / largest, model.root_weight)
-        low_sums = _power_sums(smallest / model.root, model.root_weight)
     lag = model.dead_time_s * smallest
-    low_sums[0] = low_sums[0] + lag
-
+    high_sums = _PowerSums(model.root / largest, model.root_weight, 0.0)
+    low_sums = _PowerSums(smallest / model.root, model.root_weight, lag)
     relative_degree = model.integrators - np.sum(model.root_weight, axis=0)
     log_high_gain = model.log_gain - np.sum(model.root_weight * np.log(size), axis=0)
     phase_zero = model.turn - model.integrators * (0.5 * math.pi)
@@ -74,7 +71,7 @@ def reach_of(model: Sections) -> Reach:
 
     plain_high = _plain(count, 0.0 * lag)
     plain_low = _plain(count, lag)
-    phase_high = largest / _first_rules(high_sums[0::2], count, _on_level(phase_infinite), plain_high)
+    phase_high = largest / _first_rules(high_sums, 1, count, _on_level(phase_infinite), plain_high)
     gain_high = _gain_limit(log_high_gain, relative_degree, high_sums, count, delayed, plain_high)
     gain_low = _gain_limit(model.log_gain, -model.integrators, low_sums, count, False & delayed, plain_low)
     far = np.where(relative_degree != 0, np.exp(_bounded(log_high_gain / _nonzero(relative_degree))) * 2.0, 0.0)
@@ -85,7 +82,7 @@ def reach_of(model: Sections) -> Reach:
     return Reach(
         gain_low=np.minimum(smallest * gain_low, near),
         gain_high=gain_high_at,
-        phase_low=smallest * _first_rules(low_sums[0::2], count + lag, _on_level(phase_zero), plain_low),
+        phase_low=smallest * _first_rules(low_sums, 1, count + lag, _on_level(phase_zero), plain_low),
         # There the rational part turns by less than a quarter any more: two turns of the dead time cross the level.
         phase_high=np.where(
             delayed, gain_high_at + 4.0 * math.pi / np.where(delayed, model.dead_time_s, 1.0), phase_high
@@ -104,13 +101,21 @@ def reach_of(model: Sections) -> Reach:
     )
 
 
-def _power_sums(ratio: ComplexArray, weight: FloatArray) -> list[FloatArray]:
-    sums = []
-    power = ratio
-    for _ in range(_HIGHEST_SUM):
-        sums.append(np.sum(weight * power.real, axis=0))
-        power = power * ratio
-    return sums
+class _PowerSums:
+    """Σ weight·ratio^k, computed as far as they are asked for."""
+
+    def __init__(self, ratio: ComplexArray, weight: FloatArray, first_extra: float | FloatArray) -> None:
+        self._ratio, self._weight, self._extra = ratio, weight, first_extra
+        self._power = np.ones_like(ratio)
+        self._sums: list[FloatArray] = []
+
+    def sum(self, k: int) -> FloatArray:
+        """The sum for k = 1, 2, …"""
+        while len(self._sums) < k:
+            self._power = self._power * self._ratio
+            total: FloatArray = np.add.reduce(self._weight * self._power.real, axis=0)
+            self._sums.append(total if self._sums else total + self._extra)
+        return self._sums[k - 1]
 
 
 def _plain(count: FloatArray, lag: FloatArray) -> FloatArray:
@@ -119,13 +124,18 @@ def _plain(count: FloatArray, lag: FloatArray) -> FloatArray:
     return np.minimum(0.5 / np.sqrt(np.maximum(count, 1.0)), 1.2 / full)
 
 
-def _first_rules(sums: list[FloatArray], count: FloatArray, needed: BoolArray, plain: FloatArray) -> FloatArray:
-    """Distance q within which the first sum that is not zero outweighs all later ones, where `needed`."""
+def _first_rules(sums: _PowerSums, first: int, count: FloatArray, needed: BoolArray, plain: FloatArray) -> FloatArray:
+    """Distance q within which the first sum that is not zero outweighs all later ones, where `needed`.
+
+    first: 1 for the odd sums (phase), 2 for the even ones (gain).
+    """
     q = plain
     found = ~needed
     full = np.maximum(count, 1.0)
-    for total in sums:
-        share = np.abs(total) / full
+    for k in range(first, _HIGHEST_SUM + 1, 2):
+        if found.all():
+            break
+        share = np.abs(sums.sum(k)) / full
         here = ~found & (share > _NOTHING)
         q = np.where(here, np.minimum(plain, 0.9 * np.sqrt(share / (1.0 + share))), q)
         found = found | here
@@ -135,14 +145,14 @@ def _first_rules(sums: list[FloatArray], count: FloatArray, needed: BoolArray, p
 def _gain_limit(
     log_limit: FloatArray,
     degree: FloatArray,
-    sums: list[FloatArray],
+    sums: _PowerSums,
     count: FloatArray,
     monotone: BoolArray,
     plain: FloatArray,
 ) -> FloatArray:
     """Distance q beyond which the gain crosses 1 no more, apart from the asymptote's own crossing."""
     level = (degree == 0) & (np.abs(log_limit) <= 1e-13)
-    ruled = _first_rules(sums[1::2], count, (level | monotone) & (degree == 0), plain)
+    ruled = _first_rules(sums, 2, count, (level | monotone) & (degree == 0), plain)
     clear = np.sqrt(np.abs(log_limit) / np.maximum(count, 1.0))
     return np.where((degree == 0) & ~level, np.minimum(ruled, np.maximum(clear, 1e-7)), ruled)
 

