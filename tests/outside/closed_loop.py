@@ -43,7 +43,7 @@ def unstable_poles_by_encirclement(loop: Loop) -> int:
     part = loop.rational
     assert all(mp.re(p) != 0 or p == 0 for p in part.poles)
     axis = Axis(loop)
-    start, end = _start_rad_s(loop), _end_rad_s(loop)
+    start, end = loud_from_rad_s(loop), _end_rad_s(loop)
     turn = _turn_at_origin(loop, axis, start) + _turn_along(axis, start, end) - _turn_of_arc(loop, axis, end)
     # Twice the upper half, clockwise counted: Z − P = −2·turn/2π.
     open_loop = sum(1 for p in part.poles if mp.re(p) > 0)
@@ -54,7 +54,8 @@ def unstable_poles_by_encirclement(loop: Loop) -> int:
     return whole
 
 
-def _start_rad_s(loop: Loop) -> float:
+def loud_from_rad_s(loop: Loop) -> float:
+    """A frequency below which nothing happens: every root is far above, and |L| > 1000 where it has integrators."""
     start = first_of_interest_rad_s(loop)
     if any(p == 0 for p in loop.rational.poles):
         while abs(loop.at(mpc(0, start))) < 1e3:

@@ -9,7 +9,7 @@ import numpy as np
 from mpmath import mp, mpc, mpf
 
 from tests.outside import exact_polynomial as polynomial
-from tests.outside.crossings import first_of_interest_rad_s
+from tests.outside.closed_loop import loud_from_rad_s
 from tests.outside.loop import UNITY, Loop
 from tests.outside.polish import bracketed_root
 from tests.outside.sector import Axis, Enclosure
@@ -117,7 +117,7 @@ def _delayed_supremum(loop: Loop, kind: str) -> tuple[mpf, mpf]:
     top = float(max(value for value, _ in limits))
     if not np.isfinite(top):
         return max(limits, key=lambda pair: pair[0])
-    cuts = np.geomspace(first_of_interest_rad_s(loop), _last_of_interest_rad_s(loop, kind), 400)
+    cuts = np.geomspace(loud_from_rad_s(loop), _last_of_interest_rad_s(loop, kind), 400)
     a, b = cuts[:-1], cuts[1:]
     for _ in range(200):
         middle = np.sqrt(a * b)
@@ -153,7 +153,7 @@ def _tops(kind: str, axis: Axis, compensator: Axis, loop: Loop, top: float) -> l
     Sampled finely enough for every lightly damped closed-loop mode that can matter: a maximum within 1 % of the top is
     at least as wide as |1 + L| allows, which moves by at most |L'| per step.
     """
-    cuts = np.geomspace(first_of_interest_rad_s(loop), _last_of_interest_rad_s(loop, kind), 400)
+    cuts = np.geomspace(loud_from_rad_s(loop), _last_of_interest_rad_s(loop, kind), 400)
     a, b = cuts[:-1], cuts[1:]
     done: list[np.ndarray] = []
     for _ in range(200):
@@ -269,7 +269,7 @@ def bandwidth_rad_s(loop: Loop) -> mpf | None:
 def _delayed_bandwidth(loop: Loop, level: mpf) -> mpf | None:
     """Left to right: a piece is passed when the sector proves |T| above the level, else split to the first change."""
     axis = Axis(loop)
-    cuts = np.geomspace(first_of_interest_rad_s(loop), _last_of_interest_rad_s(loop, "sensitivity"), 400)
+    cuts = np.geomspace(loud_from_rad_s(loop), _last_of_interest_rad_s(loop, "sensitivity"), 400)
     waiting = list(pairwise(cuts))[::-1]
     target = float(level)
 

@@ -22,7 +22,7 @@ LOOPS = {
             gain=0.7,
             stages=[{"kind": "proportional_integral", "corner_rad_s": 0.8}],
         ),
-        40,
+        20,
     ),
     "zero in the right half plane": (
         design_of(factored(-0.3, zeros=[2.0], poles=[0, -1.5], dead_time_s=0.4), gain=0.9),
