@@ -40,6 +40,15 @@ def has_value(handle: Locator, want: float, rel: float = 1e-5) -> None:
         handle.page.wait_for_timeout(20)
 
 
+def changed_value(handle: Locator, before: float) -> float:
+    """Wait until a handle tells another value than before; gives it."""
+    deadline = time.monotonic() + 10
+    while (now := value(handle)) == before:
+        assert time.monotonic() < deadline, f"still {before}"
+        handle.page.wait_for_timeout(20)
+    return now
+
+
 def take(page: Page, handle: Locator) -> tuple[float, float]:
     """Close the hand on a handle; gives where."""
     x, y = middle(handle)
@@ -60,7 +69,7 @@ def px_per_decade(page: Page, handle: Locator) -> float:
     before = value(handle)
     x, y = take(page, handle)
     page.mouse.move(x + 40, y)
-    after = value(handle)
+    after = changed_value(handle, before)
     page.keyboard.press("Escape")
     page.mouse.up()
     settled(page)

@@ -49,6 +49,7 @@ def test_a_drag_moves_readings_while_held_and_is_one_step(open_design: Open, ben
     x, y = take(page, zero)
     page.mouse.move(x - 60, y, steps=10)
     expect(told).not_to_have_text(before)
+    page.wait_for_timeout(150)
     held = value(zero)
     assert held < 4.0
     expect(page.locator("#charts .stage")).to_have_class(re.compile("is-held"))
@@ -72,7 +73,7 @@ def test_the_marker_stays_under_the_pointer(open_design: Open, bench_design: dic
     pole = marker(page, "lead pole")
     x, y = take(page, pole)
     page.mouse.move(x + 50, y, steps=5)
-    page.wait_for_timeout(100)
+    page.wait_for_timeout(250)
     assert middle(pole)[0] == pytest.approx(x + 50, abs=1.5)
     page.mouse.up()
 
@@ -107,6 +108,7 @@ def test_shift_makes_fine_moves(open_design: Open, bench_design: dict[str, Any])
     page.mouse.move(x + 60, y, steps=6)
     page.keyboard.up("Shift")
     page.mouse.up()
+    settled(page)
     assert math.log10(value(zero) / 4.0) * per_decade == pytest.approx(6, abs=0.2)
 
 
@@ -121,6 +123,7 @@ def test_the_bar_keeps_the_ratio(open_design: Open, bench_design: dict[str, Any]
 def test_rail_and_marker_move_together(open_design: Open, bench_design: dict[str, Any]) -> None:
     page = open_design(bench_design)
     pull(page, rail_handle(page, "lead zero"), 45)
+    settled(page)
     assert value(marker(page, "lead zero")) == value(rail_handle(page, "lead zero")) > 4.0
     assert middle(marker(page, "lead zero"))[0] == pytest.approx(middle(rail_handle(page, "lead zero"))[0], abs=1)
 

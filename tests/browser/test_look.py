@@ -97,6 +97,23 @@ def test_the_wheel_zooms_about_the_pointer_and_words_undo_it(open_design: Open, 
     assert _ticks(page) == before
 
 
+def test_the_time_axis_zooms_too(open_design: Open, bench_design: dict[str, Any]) -> None:
+    page = open_design(bench_design)
+    ticks = page.locator("#responses .figure .xtick text")
+    before = ticks.all_text_contents()
+    box = page.locator("#responses .surface").bounding_box()
+    assert box
+    page.mouse.move(box["x"] + 5, box["y"] + 40)
+    page.mouse.wheel(0, -400)
+    fit = page.get_by_role("button", name="fit: show all times again")
+    expect(fit).to_be_visible()
+    settled(page)
+    assert ticks.all_text_contents() != before
+    fit.click()
+    settled(page)
+    assert ticks.all_text_contents() == before
+
+
 def test_a_box_zooms_into_it(open_design: Open, bench_design: dict[str, Any]) -> None:
     page = open_design(bench_design)
     before = _ticks(page)

@@ -1,6 +1,5 @@
 /** The loop over frequency: gain and phase with everything that can be held, and the rail below them. */
 
-import { el } from "./element.js";
 import { curveKey } from "./curve_key.js";
 import { changeInWords, flag } from "./flag.js";
 import { number } from "./format.js";
@@ -18,6 +17,7 @@ import { rail } from "./rail.js";
 import { readingFlag } from "./reading_flag.js";
 import { limitFences } from "./limit_fences.js";
 import { Scene } from "./scene.js";
+import { unstableWords } from "./stability_words.js";
 import { zoomSurface } from "./surface.js";
 import { set, show, svg } from "./svg.js";
 import { toShown } from "./units.js";
@@ -132,14 +132,6 @@ function chartTitles(/** @type {SVGElement} */ parent) {
       set(unstable, { x: left + 10, y: upper.bottom - 12, text: unstableWords(scene.frame.assessment.cases) });
     },
   };
-}
-
-/** "closed loop unstable on heavy payload", or "". @param {any[]} cases */
-export function unstableWords(cases) {
-  const names = cases.filter((one) => !one.stable).map((one) => one.name);
-  if (names.length === 0) return "";
-  if (names.length === cases.length) return cases.length === 1 ? "closed loop unstable" : "closed loop unstable on every case";
-  return `closed loop unstable on ${names.length > 2 ? `${names.slice(0, 2).join(", ")} and ${names.length - 2} more` : names.join(" and ")}`;
 }
 
 function drawFlag(/** @type {any} */ pennant, /** @type {Scene} */ scene, /** @type {{grasp: Grasp | null, how: string}} */ lit,

@@ -85,7 +85,7 @@ export function withGainOf(design, gain) {
 }
 
 /** @param {any} stage depth of a notch in dB, positive downwards */
-export function depthOf(stage) {
+function depthOf(stage) {
   if (!(stage.zero_damping > 0)) return DEEPEST_DB;
   return Math.min(DEEPEST_DB, 20 * Math.log10(stage.pole_damping / stage.zero_damping));
 }

@@ -82,4 +82,3 @@ function trueMinus(/** @type {string} */ text) {
   return text.replace("-", MINUS);
 }
 
-export { MINUS };

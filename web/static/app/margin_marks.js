@@ -65,6 +65,6 @@ function isPlace(measure) {
 }
 
 /** −180° + k·360° closest to a phase. @param {number} phase */
-export function nearestHalfTurn(phase) {
+function nearestHalfTurn(phase) {
   return Math.round((phase + 180) / 360) * 360 - 180;
 }

@@ -3,15 +3,14 @@
  * handles, the bar between them moves both. Where a lane has nothing to hold, it says why.
  */
 
-import { cornersOf, isAwake, notchesOf } from "./corners.js";
-import { number } from "./format.js";
+import { cornersOf, isAwake } from "./corners.js";
+import { number, tick as tickText } from "./format.js";
 import { glyph } from "./glyphs.js";
 import { barGrasp, cornerGrasp, gainGrasp } from "./grasps.js";
 import { handle } from "./handle.js";
 import { keyed } from "./keyed.js";
 import { frequencyTicks } from "./scales.js";
 import { set, show, svg, textWidth } from "./svg.js";
-import { tick as tickText } from "./format.js";
 
 /** @typedef {import("./scene.js").Scene} Scene */
 /** @typedef {import("./handle.js").Hand} Hand */

@@ -1,6 +1,5 @@
 /** The three responses over time: command, load, actuator effort; same picture language as the loop. */
 
-import { unstableWords } from "./charts.js";
 import { curveOf, valueAt } from "./envelope.js";
 import { number } from "./format.js";
 import { responseGeometry } from "./geometry.js";
@@ -12,6 +11,7 @@ import { responseMark } from "./response_mark.js";
 import { actuatorLimits, responsePicture, RESPONSES, stableCases } from "./response_picture.js";
 import { responseTitles } from "./response_titles.js";
 import { linearScale, timeUnit } from "./scales.js";
+import { unstableWords } from "./stability_words.js";
 import { zoomSurface } from "./surface.js";
 import { set, svg } from "./svg.js";
 import { fittedResponse, fittedTime, steady, View } from "./view.js";

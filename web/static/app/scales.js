@@ -63,7 +63,7 @@ export function timeUnit(span_s) {
 }
 
 /** 1, 2, 2.5 or 5 times a power of ten, at least `rough`. @param {number} rough */
-export function niceStep(rough) {
+function niceStep(rough) {
   const power = 10 ** Math.floor(Math.log10(rough));
   for (const mark of [1, 2, 2.5, 5]) if (mark * power >= rough * 0.9999) return mark * power;
   return 10 * power;
