@@ -106,7 +106,10 @@ ODD_LOOPS = {
     "constant": ({"kind": "factored", "gain": 2.0}, 1.0),
     "pure gain below one": ({"kind": "factored", "gain": 0.5}, 1.0),
     "pure dead time": ({"kind": "factored", "gain": 0.5, "dead_time_s": 1.0}, 1.0),
-    "biproper with dead time": ({"kind": "factored", "gain": 2.0, "zeros": [-1], "poles": [-3], "dead_time_s": 1.0}, 1.0),
+    "biproper with dead time": (
+        {"kind": "factored", "gain": 2.0, "zeros": [-1], "poles": [-3], "dead_time_s": 1.0},
+        1.0,
+    ),
     "oscillator": ({"kind": "factored", "gain": 1.0, "poles": [[0, 5], [0, -5]]}, 1.0),
     "double integrator": ({"kind": "factored", "gain": 1.0, "poles": [0, 0]}, 1.0),
     "zero at the origin": ({"kind": "factored", "gain": 3.0, "zeros": [0], "poles": [-1, -2]}, 1.0),

@@ -60,7 +60,12 @@ MISTAKES = [
     ("requirements", [{"measure": "phase_margin_deg"}], "requirements[0]", "needs at_least or at_most"),
     ("requirements", [{**ROW, "at_most": 40}], "requirements[0].at_most", "must be at least 45"),
     ("requirements", [{**ROW, "at_rad_s": 3}], "requirements[0].at_rad_s", "does not go with"),
-    ("requirements", [{**ROW, "cases": ["full"]}], "requirements[0].cases[0]", "not a plant case; known: empty, loaded"),
+    (
+        "requirements",
+        [{**ROW, "cases": ["full"]}],
+        "requirements[0].cases[0]",
+        "not a plant case; known: empty, loaded",
+    ),
     ("requirements", [{**ROW, "rank": "may"}], "requirements[0].rank", "must be 'must' or 'should'"),
     ("requirements", [{"measure": "sensitivity_db", "at_most": 6}], "requirements[0]", "needs one of at_rad_s"),
     (
