@@ -9,8 +9,8 @@ from typing import Literal, TypeAlias
 
 import numpy as np
 
+from engine.loop.analysis import Analysis, analysis_of
 from engine.loop.closed_loop_gain import Points, Quantity, log_level
-from engine.loop.frequency import Prepared, prepared
 from engine.loop.loop_set import LoopSet
 from engine.loop.margins import DB
 from engine.loop.narrow import narrow_places
@@ -63,7 +63,7 @@ class _Segment:
 
 def level_at(loops: LoopSet, quantity: BandQuantity, omega_rad_s: float) -> FloatArray:
     """(c,) the quantity at one frequency > 0, in dB or degrees; ±inf at an undamped root of the loop."""
-    ready = prepared(loops)
+    ready = analysis_of(loops)
     case = np.arange(loops.count)
     kind = _QUANTITY[quantity]
     omega = np.full(loops.count, float(omega_rad_s))
@@ -101,7 +101,7 @@ def _worst(
     loops: LoopSet, quantity: BandQuantity, segments: list[_Segment], sign: float
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Where sign·(value − limit) is greatest: value, limit and frequency per case."""
-    ready = prepared(loops)
+    ready = analysis_of(loops)
     kind = _QUANTITY[quantity]
     unit = _unit(kind)
     row = _sampled_row(ready, kind)
@@ -126,7 +126,7 @@ def _worst(
     return value[best], limit[best], omega[best]
 
 
-def _candidates(ready: Prepared, kind: Quantity, row: FloatArray, segment: _Segment, sign: float, tilt: float) -> Tasks:
+def _candidates(ready: Analysis, kind: Quantity, row: FloatArray, segment: _Segment, sign: float, tilt: float) -> Tasks:
     """The ends, the local extremes of the samples between them, and places where a narrow one may hide."""
     omega = ready.samples.nodes.omega_rad_s
     count = row.shape[0]
@@ -150,7 +150,7 @@ def _candidates(ready: Prepared, kind: Quantity, row: FloatArray, segment: _Segm
         start.append(np.full(count, math.sqrt(segment.low) * math.sqrt(segment.high)))
         left.append(np.full(count, segment.low))
         right.append(np.full(count, segment.high))
-    where, at, before, after = narrow_places(ready.samples, ready.found, ready.roots)
+    where, at, before, after = narrow_places(ready.samples, ready.brackets, ready.roots)
     held = (at > segment.low) & (at < segment.high)
     cases.append(where[held])
     start.append(at[held])
@@ -178,7 +178,7 @@ def _candidates(ready: Prepared, kind: Quantity, row: FloatArray, segment: _Segm
     return joined_tasks(found, ripple_tasks(ready.samples, (kind,), best[None, :], sign, tilt, band))
 
 
-def _sampled_row(ready: Prepared, kind: Quantity) -> FloatArray:
+def _sampled_row(ready: Analysis, kind: Quantity) -> FloatArray:
     """(c, n) ln of the quantity (radians for the phase) on the grid."""
     nodes = ready.samples.nodes
     shape = nodes.gain.shape
@@ -187,7 +187,7 @@ def _sampled_row(ready: Prepared, kind: Quantity) -> FloatArray:
     return log_level(points, np.tile(nodes.omega_rad_s, shape[0])).reshape(shape)
 
 
-def _points(ready: Prepared, kind: Quantity, case: IntArray) -> Points:
+def _points(ready: Analysis, kind: Quantity, case: IntArray) -> Points:
     return Points.of(ready.samples, np.full(len(case), int(kind), dtype=np.int64), case)
 
 

@@ -8,7 +8,7 @@ from enum import IntEnum
 
 import numpy as np
 
-from engine.loop.gain_phase import gain_and_phase, slope_and_bend
+from engine.loop.gain_phase import FactorValues, factor_values, root_terms, summed
 from engine.loop.grid import Sampled
 from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.model.factored import ComplexArray, FloatArray
@@ -43,16 +43,24 @@ _LOAD, _LOOP, _PHASE = int(Quantity.LOAD), int(Quantity.LOOP), int(Quantity.PHAS
 
 
 @dataclass(frozen=True, eq=False)
+class Side:
+    """The part of each point's loop whose gain multiplies S: C for C·S, P for P·S, nothing elsewhere."""
+
+    log_gain: FloatArray
+    integrators: FloatArray
+    corner_weight: FloatArray
+    pair_weight: FloatArray
+    root_weight: FloatArray
+
+
+@dataclass(frozen=True, eq=False)
 class Points:
     """Points (p,), each in one case and for one quantity."""
 
     quantity: IntArray
     loop: Sections
     """(p,) the factors of each point's own case."""
-    side: Sections | None
-    """P where P·S is asked for, C where C·S is: (p,) or one case for all points."""
-    has_side: FloatArray
-    """(p,) 1 where `side` counts, else 0."""
+    side: Side | None
     complementary: BoolArray
     disk: BoolArray
     open_loop: BoolArray
@@ -64,26 +72,40 @@ class Points:
     @staticmethod
     def of(samples: Sampled, quantity: IntArray, case: IntArray) -> Points:
         """The factors for points of the given quantities and cases."""
-        load, effort = quantity == _LOAD, quantity == _EFFORT
-        side: Sections | None = None
-        # Either all points ask for P·S or none: bands and masks are read one quantity at a time.
-        if load.any():
-            side = samples.plant.at(case)
-        elif effort.any():
-            side = samples.compensator
+        loop = samples.loop.at(case)
+        effort, load = quantity == _EFFORT, quantity == _LOAD
         open_loop = quantity >= _LOOP
         disk = quantity == _DISK
         return Points(
             quantity,
-            samples.loop.at(case),
-            side,
-            (load | effort).astype(np.float64),
+            loop,
+            _side(samples, loop, case, effort, load) if effort.any() or load.any() else None,
             quantity == _COMPLEMENTARY,
             disk,
             open_loop,
             bool(disk.any()),
             not open_loop.any(),
         )
+
+
+def _side(samples: Sampled, loop: Sections, case: IntArray, effort: BoolArray, load: BoolArray) -> Side:
+    """The compensator's factors stand first in the loop: C·S takes those, P·S the rest."""
+    C, P = samples.compensator, samples.plant
+    of_C, of_P = effort.astype(np.float64), load.astype(np.float64)
+
+    def weights(weight: FloatArray, first: int) -> FloatArray:
+        own = weight.copy()
+        own[:first] *= of_C
+        own[first:] *= of_P
+        return own
+
+    return Side(
+        of_C * C.log_gain + of_P * P.log_gain[case],
+        of_C * C.integrators + of_P * P.integrators[case],
+        weights(loop.corner_weight, C.corners),
+        weights(loop.pair_weight, C.pairs),
+        weights(loop.root_weight, len(C.root)),
+    )
 
 
 def sensitivity(log_gain: FloatArray, phase: FloatArray) -> ComplexArray:
@@ -99,38 +121,56 @@ def sensitivity(log_gain: FloatArray, phase: FloatArray) -> ComplexArray:
 
 def log_level(points: Points, omega_rad_s: FloatArray) -> FloatArray:
     """(p,) natural logarithm of each point's quantity."""
-    gain, phase = gain_and_phase(points.loop, omega_rad_s)
-    return _level(points, omega_rad_s, gain, phase, sensitivity(gain, phase))
+    values = factor_values(points.loop, omega_rad_s)
+    gain, phase = summed(points.loop, omega_rad_s, values)
+    return _level(points, omega_rad_s, values, gain, phase, sensitivity(gain, phase))
 
 
 def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """ln of each point's quantity, and its first and second derivative in ln ω."""
-    gain, phase = gain_and_phase(points.loop, omega_rad_s)
-    first, second = slope_and_bend(points.loop, omega_rad_s)
+    loop, side = points.loop, points.side
+    values = factor_values(loop, omega_rad_s)
+    gain, phase = summed(loop, omega_rad_s, values)
     S = sensitivity(gain, phase)
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        # d ln q / d ln L and its own derivative; dT/d ln L = S·T, and (1−L)/(1+L) = S − T.
-        T = 1.0 - S
-        product = S * T
-        rate, bend = np.where(points.complementary, S, -T), -product
-        if points.any_disk:
-            disk = S - T
-            quotient = product / disk
-            rate = np.where(points.disk, -2.0 * quotient, rate)
-            bend = np.where(points.disk, -2.0 * quotient * (disk + 2.0 * quotient), bend)
-        if not points.plain:
-            rate = np.where(points.open_loop, np.where(points.quantity == _PHASE, -1j, 1.0), rate)
-            bend = np.where(points.open_loop, 0.0, bend)
+        terms = root_terms(loop, omega_rad_s)
+        bends = terms - terms * terms
+        lag = 1j * (loop.dead_time_s * omega_rad_s)
+        first = np.add.reduce(loop.root_weight * terms, axis=0) - loop.integrators - lag
+        second = np.add.reduce(loop.root_weight * bends, axis=0) - lag
+        rate, bend = _by_loop(points, S)
         slope = (rate * first).real
         curve = (bend * (first * first) + rate * second).real
-    if points.side is not None:
-        side_first, side_second = slope_and_bend(points.side, omega_rad_s)
-        slope = slope + points.has_side * side_first.real
-        curve = curve + points.has_side * side_second.real
-    return _level(points, omega_rad_s, gain, phase, S), slope, curve
+        if side is not None:
+            slope = slope + np.add.reduce(side.root_weight * terms.real, axis=0) - side.integrators
+            curve = curve + np.add.reduce(side.root_weight * bends.real, axis=0)
+    return _level(points, omega_rad_s, values, gain, phase, S), slope, curve
 
 
-def _level(points: Points, omega_rad_s: FloatArray, gain: FloatArray, phase: FloatArray, S: ComplexArray) -> FloatArray:
+def _by_loop(points: Points, S: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
+    """d ln q / d ln L and its own derivative; dT/d ln L = S·T, and (1−L)/(1+L) = S − T."""
+    T = 1.0 - S
+    product = S * T
+    rate, bend = np.where(points.complementary, S, -T), -product
+    if points.any_disk:
+        disk = S - T
+        quotient = product / disk
+        rate = np.where(points.disk, -2.0 * quotient, rate)
+        bend = np.where(points.disk, -2.0 * quotient * (disk + 2.0 * quotient), bend)
+    if not points.plain:
+        rate = np.where(points.open_loop, np.where(points.quantity == _PHASE, -1j, 1.0), rate)
+        bend = np.where(points.open_loop, 0.0, bend)
+    return rate, bend
+
+
+def _level(
+    points: Points,
+    omega_rad_s: FloatArray,
+    values: FactorValues,
+    gain: FloatArray,
+    phase: FloatArray,
+    S: ComplexArray,
+) -> FloatArray:
     with np.errstate(divide="ignore", invalid="ignore"):
         wanted = np.where(points.disk, 2.0 * S - 1.0, S) if points.any_disk else S
         level: FloatArray = np.log(np.abs(wanted)) + np.where(points.complementary, gain, 0.0)
@@ -138,8 +178,14 @@ def _level(points: Points, omega_rad_s: FloatArray, gain: FloatArray, phase: Flo
     if gain.max(initial=0.0) > _LARGEST:
         beyond = np.where(points.complementary | points.disk, 0.0, -gain)
         level = np.where(gain > _LARGEST, beyond, level)
-    if points.side is not None:
-        level = level + points.has_side * gain_and_phase(points.side, omega_rad_s)[0]
+    side = points.side
+    if side is not None:
+        level = level + (side.log_gain - side.integrators * np.log(omega_rad_s))
+        with np.errstate(invalid="ignore"):
+            level = level + 0.5 * (
+                np.add.reduce(side.corner_weight * values.corner_size, axis=0)
+                + np.add.reduce(side.pair_weight * values.pair_size, axis=0)
+            )
     if points.plain:
         return level
     return np.where(points.open_loop, np.where(points.quantity == _PHASE, phase, gain), level)

@@ -1,4 +1,4 @@
-"""Crossings polished to a few ulps inside their brackets, and put in order."""
+"""Crossings as tasks for the polisher, and their lists once polished."""
 
 from __future__ import annotations
 
@@ -7,8 +7,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from engine.loop.gain_phase import gain_and_phase, slope
+from engine.loop.closed_loop_gain import Quantity
+from engine.loop.gain_phase import gain_and_phase
 from engine.loop.isolation import TURN, Brackets, Kind, noise_of
+from engine.loop.polish import Tasks, joined_tasks
 from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.model.factored import FloatArray
 
@@ -42,73 +44,56 @@ class Crossings:
         )
 
 
-def polished_crossings(loop: Sections, gain: Brackets, phase: Brackets) -> tuple[Crossings, Crossings]:
-    """Gain and phase crossings in one batch, by Newton's method inside the brackets."""
-    both = Brackets.joined([gain, phase])
-    is_gain = np.arange(len(both.case)) < len(gain.case)
-    if not len(both.case):
-        empty = np.empty(0)
-        none = Crossings(both.case, empty, empty, empty, both.case)
-        return none, none
-    own = loop.at(both.case)
-    target = both.level * TURN - math.pi
-    crossing = both.left < both.right
-    omega, rising = _roots(own, both, is_gain, target)
-    level, turn = gain_and_phase(own, omega)
-    direction = np.where(crossing, np.where(rising, 1, -1), 0).astype(np.int64)
-    result = Crossings(both.case, omega, level, turn, direction)
-    return _in_order(loop, result, is_gain), _in_order(loop, result, ~is_gain)
+def crossing_tasks(gain: Brackets, phase: Brackets) -> Tasks:
+    """The crossings as levels to be met: gain first, then phase; touchings stay where they are."""
+    parts = []
+    for brackets, quantity in ((gain, Quantity.LOOP), (phase, Quantity.PHASE)):
+        moving = brackets.where(brackets.left < brackets.right)
+        count = len(moving.case)
+        level = moving.level * TURN - math.pi if quantity == Quantity.PHASE else moving.level
+        sign = np.where(moving.rising, -1.0, 1.0)
+        kind = np.full(count, int(quantity), dtype=np.int64)
+        parts.append(Tasks(kind, moving.case, moving.left, moving.start, moving.right, level, sign, np.zeros(count)))
+    return joined_tasks(*parts)
 
 
-def _roots(own: Sections, brackets: Brackets, is_gain: BoolArray, target: FloatArray) -> tuple[FloatArray, BoolArray]:
-    """Frequencies of the crossings, and whether the curve rises through them; touchings stay where they are."""
-    left, right = brackets.left.copy(), brackets.right.copy()
-    crossing = left < right
-    y_left, y_right = _value(own, left, is_gain, target), _value(own, right, is_gain, target)
-    rising = y_right > y_left
-    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        share = y_left / (y_left - y_right)
-    share = np.where(np.isfinite(share), np.clip(share, 0.0, 1.0), 0.5)
-    omega = np.where(crossing, left * np.exp(np.log(right / left) * share), left)
-    for _ in range(80):
-        y = _value(own, omega, is_gain, target)
-        rate = slope(own, omega)
-        above = (y >= 0) == rising
-        right, left = np.where(above, omega, right), np.where(above, left, omega)
-        with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-            move = -y / np.where(is_gain, rate.real, rate.imag)
-            after = omega * np.exp(move)
-            inside = (after >= left) & (after <= right)
-        there = (y == 0) | (np.abs(move) <= 1e-14)
-        after = np.where(inside, after, np.where(there, omega, np.sqrt(left) * np.sqrt(right)))
-        done = ~crossing | there | (np.abs(after - omega) <= 1e-10 * omega) | (right - left <= 1e-15 * omega)
-        omega = np.where(crossing, np.clip(after, brackets.left, brackets.right), omega)
-        if done.all():
-            break
-    return omega, rising
+def in_order(loop: Sections, gain: Brackets, phase: Brackets, omega: FloatArray) -> tuple[Crossings, Crossings]:
+    """Gain and phase crossings by case and frequency; what rounding cannot tell apart is made one touching.
+
+    omega: polished frequencies in the order of `crossing_tasks`.
+    """
+    moving = [brackets.left < brackets.right for brackets in (gain, phase)]
+    first = int(np.count_nonzero(moving[0]))
+    places, cases, directions = [], [], []
+    for brackets, crossing, found in zip((gain, phase), moving, (omega[:first], omega[first:]), strict=True):
+        place = brackets.start.copy()
+        place[crossing] = found
+        places.append(place)
+        cases.append(brackets.case)
+        directions.append(np.where(crossing, np.where(brackets.rising, 1, -1), 0).astype(np.int64))
+    case, place = np.concatenate(cases), np.concatenate(places)
+    level, turn = gain_and_phase(loop.at(case), place)
+    split = len(cases[0])
+    one = _sorted(Crossings(case[:split], place[:split], level[:split], turn[:split], directions[0]))
+    other = _sorted(Crossings(case[split:], place[split:], level[split:], turn[split:], directions[1]))
+    return _without_echoes(loop, one, "gain"), _without_echoes(loop, other, "phase")
 
 
-def _value(own: Sections, omega: FloatArray, is_gain: BoolArray, target: FloatArray) -> FloatArray:
-    gain, phase = gain_and_phase(own, omega)
-    return np.where(is_gain, gain, phase - target)
-
-
-def _in_order(loop: Sections, points: Crossings, chosen: BoolArray) -> Crossings:
-    """Sorted by case and frequency; what rounding cannot tell apart made one touching."""
-    index = np.nonzero(chosen)[0]
-    index = index[np.lexsort((points.omega_rad_s[index], points.case[index]))]
-    ordered = Crossings(
+def _sorted(points: Crossings) -> Crossings:
+    index = np.lexsort((points.omega_rad_s, points.case))
+    return Crossings(
         points.case[index],
         points.omega_rad_s[index],
         points.gain[index],
         points.phase[index],
         points.direction[index],
     )
-    if len(index) < 2:
-        return ordered
-    omega = ordered.omega_rad_s
-    close = (np.diff(ordered.case) == 0) & (omega[1:] - omega[:-1] <= _SAME_PLACE * omega[1:])
-    return _merged(loop, ordered, close, "gain" if chosen[0] else "phase") if close.any() else ordered
+
+
+def _without_echoes(loop: Sections, points: Crossings, kind: Kind) -> Crossings:
+    omega = points.omega_rad_s
+    close = (np.diff(points.case) == 0) & (omega[1:] - omega[:-1] <= _SAME_PLACE * omega[1:])
+    return _merged(loop, points, close, kind) if close.any() else points
 
 
 def _merged(loop: Sections, points: Crossings, close: BoolArray, kind: Kind) -> Crossings:

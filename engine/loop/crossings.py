@@ -7,9 +7,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from engine.loop.crossing_polish import Crossings, polished_crossings
+from engine.loop.crossing_polish import Crossings, crossing_tasks, in_order
 from engine.loop.grid import Sampled
-from engine.loop.isolation import TURN, isolated, turns
+from engine.loop.isolation import TURN, Brackets, isolated, turns
+from engine.loop.polish import polished
 from engine.loop.sections import BoolArray
 from engine.model.factored import FloatArray
 
@@ -19,46 +20,52 @@ LISTED_AT_MOST = 400
 
 
 @dataclass(frozen=True, eq=False)
-class Found:
-    """Both kinds of crossings of a loop set, and what was noticed on the way."""
+class Isolated:
+    """Every gain and phase crossing in a bracket of its own, and what was noticed on the way."""
 
-    gain: Crossings
-    phase: Crossings
-    flat_phase: BoolArray
-    """(c,) the phase lies on −180° over a whole stretch."""
+    gain: Brackets
+    phase: Brackets
     flat_gain: BoolArray
+    """(c,) |L| rests at 1 over a whole stretch."""
+    flat_phase: BoolArray
+    """(c,) the phase rests on −180° over a whole stretch."""
     listed_up_to: FloatArray
     """(c,) with dead time: phase crossings are listed up to here [rad/s]; inf without."""
     shortened: BoolArray
     """(c,) the list was cut at LISTED_AT_MOST."""
 
 
-def find_crossings(samples: Sampled) -> Found:
-    """Every gain and phase crossing at 0 < ω < ∞ of every case."""
+@dataclass(frozen=True, eq=False)
+class Found:
+    """Both kinds of crossings of a loop set, polished and in order."""
+
+    gain: Crossings
+    phase: Crossings
+
+
+def isolate_crossings(samples: Sampled) -> Isolated:
+    """A bracket for every gain and phase crossing at 0 < ω < ∞ of every case."""
     nodes, reach, loop = samples.nodes, samples.reach, samples.loop
     left, right = nodes.omega_rad_s[:-1], nodes.omega_rad_s[1:]
     in_gain = (right > reach.gain_low[:, None]) & (left < reach.gain_high[:, None])
     end, shortened = _end_of_phase_search(samples)
     in_phase = (right > reach.phase_low[:, None]) & (left < end[:, None])
-    gain, flat_gain = isolated(loop, nodes.omega_rad_s, nodes.gain, nodes.gain_slope, in_gain, nodes.jump, "gain")
-    low, high = nodes.phase_slope
-    phase, flat_phase = isolated(
-        loop,
-        nodes.omega_rad_s,
-        turns(nodes.phase),
-        (low / TURN, high / TURN),
-        in_phase & ~nodes.jump,
-        nodes.jump,
-        "phase",
-    )
-    delayed = loop.dead_time_s > 0
-    return Found(
-        *polished_crossings(loop, gain, phase),
-        flat_phase=flat_phase,
-        flat_gain=flat_gain,
-        listed_up_to=np.where(delayed, end, math.inf),
-        shortened=shortened,
-    )
+    gain, flat_gain = isolated(samples, in_gain, "gain")
+    phase, flat_phase = isolated(samples, in_phase, "phase")
+    listed_up_to = np.where(loop.dead_time_s > 0, end, math.inf)
+    return Isolated(gain, phase, flat_gain, flat_phase, listed_up_to, shortened)
+
+
+def find_crossings(samples: Sampled) -> Found:
+    """Every crossing of every case, isolated and polished by itself."""
+    brackets = isolate_crossings(samples)
+    omega, _ = polished(samples, crossing_tasks(brackets.gain, brackets.phase))
+    return settled_crossings(samples, brackets, omega)
+
+
+def settled_crossings(samples: Sampled, brackets: Isolated, omega: FloatArray) -> Found:
+    """The lists, from the polished frequencies in the order of `crossing_tasks`."""
+    return Found(*in_order(samples.loop, brackets.gain, brackets.phase, omega))
 
 
 def _end_of_phase_search(samples: Sampled) -> tuple[FloatArray, BoolArray]:
@@ -87,11 +94,10 @@ def _quiet_from(samples: Sampled, case: int) -> float | None:
     """Lowest node from which on |L| is proven too small to matter; None where no node is high enough to tell."""
     nodes = samples.nodes
     omega, gain = nodes.omega_rad_s, nodes.gain[case]
-    low, high = nodes.gain_slope[0][case], nodes.gain_slope[1][case]
-    step = np.log(omega[1:] / omega[:-1])
     ends = np.maximum(gain[:-1], gain[1:])
-    with np.errstate(invalid="ignore"):
-        top = np.fmax(ends, np.minimum(gain[:-1] + high * step, gain[1:] - low * step))
+    # Rising from the left end and falling to the right one as steeply as the bound allows.
+    climb = nodes.gain_steepness[case] * np.log(omega[1:] / omega[:-1])
+    top = np.maximum(ends, 0.5 * (gain[:-1] + gain[1:] + climb))
     ceiling = np.maximum.accumulate(top[::-1])[::-1]
     level = np.floor(turns(nodes.phase[case]))
     first = np.nonzero((level[1:] != level[:-1]) & (ends < 0))[0]

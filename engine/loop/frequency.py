@@ -5,12 +5,12 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import lru_cache
 
-from engine.loop.closed_loop_roots import ClosedLoopRoots, closed_loop_roots
+from engine.loop.analysis import Analysis, analysis_of
+from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.crossing_polish import Crossings
-from engine.loop.crossings import LISTED_AT_MOST, Found, find_crossings
-from engine.loop.grid import Sampled, sampled
+from engine.loop.crossings import LISTED_AT_MOST, Isolated
+from engine.loop.grid import Sampled
 from engine.loop.loop_set import LoopSet
 from engine.loop.margins import (
     DB,
@@ -23,7 +23,7 @@ from engine.loop.margins import (
     phase_margin,
     signed_distance_deg,
 )
-from engine.loop.peaks import Peaks, find_peaks
+from engine.loop.peaks import Peaks
 from engine.loop.pole_measures import pole_measures
 from engine.loop.reading import Reading, value, without_value
 from engine.loop.stability import Stability, decide_stability
@@ -31,15 +31,6 @@ from engine.loop.steady_state import error_constants, final_errors
 from engine.model.factored import ComplexArray, FloatArray
 
 __all__ = ["CaseFrequency", "FrequencyView", "GainCrossover", "PhaseCrossover", "read_frequency"]
-
-
-@dataclass(frozen=True, eq=False)
-class Prepared:
-    """What the readings at chosen frequencies share with the whole view."""
-
-    samples: Sampled
-    found: Found
-    roots: ClosedLoopRoots
 
 
 @dataclass(frozen=True, slots=True)
@@ -84,32 +75,23 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
     properties of L alone, and the raw crossings stay. A crossover that only touches 0 dB counts for the margins but
     is no downward crossing.
     """
-    ready = prepared(loops)
-    samples, found, roots = ready.samples, ready.found, ready.roots
-    verdicts = decide_stability(samples, found, roots)
-    peaks = find_peaks(samples, found, roots)
-    cases = tuple(_case(samples, found, roots, peaks, verdict, case) for case, verdict in enumerate(verdicts))
+    analysis = analysis_of(loops)
+    samples = analysis.samples
+    verdicts = decide_stability(samples, analysis.found, analysis.roots)
+    cases = tuple(_case(analysis, verdict, case) for case, verdict in enumerate(verdicts))
     return FrequencyView(
         samples.nodes.omega_rad_s,
         samples.nodes.gain * DB,
         samples.nodes.phase * (180.0 / math.pi),
         cases,
-        roots,
+        analysis.roots,
     )
 
 
-@lru_cache(maxsize=4)
-def prepared(loops: LoopSet) -> Prepared:
-    """Grid, crossings and closed-loop roots; a loop set is told by identity, so one assessment computes them once."""
-    samples = sampled(loops)
-    return Prepared(samples, find_crossings(samples), closed_loop_roots(loops))
-
-
-def _case(
-    samples: Sampled, found: Found, roots: ClosedLoopRoots, peaks: Peaks, verdict: Stability, case: int
-) -> CaseFrequency:
-    gain_crossovers = _gain_crossovers(found.gain.of(case))
-    phase_crossovers = _phase_crossovers(samples, found.phase.of(case), case)
+def _case(analysis: Analysis, verdict: Stability, case: int) -> CaseFrequency:
+    samples, roots = analysis.samples, analysis.roots
+    gain_crossovers = _gain_crossovers(analysis.found.gain.of(case))
+    phase_crossovers = _phase_crossovers(samples, analysis.found.phase.of(case), case)
     integrators = int(samples.loop.integrators[case])
     low_gain = float(samples.loop.low_gain[case])
     readings = error_constants(integrators, low_gain)
@@ -122,7 +104,7 @@ def _case(
         readings["phase_margin_deg"] = phase_margin(gain_crossovers)
         readings["gain_margin_db"], readings["gain_reduction_margin_db"] = up, down
         readings["delay_margin_s"] = delay_margin(gain_crossovers, _high_gain(samples, case))
-        readings |= _peak_readings(peaks, case)
+        readings |= _peak_readings(analysis.peaks, case)
         readings |= final_errors(integrators, low_gain)
         readings |= pole_measures(own_roots, complete)
     else:
@@ -135,7 +117,7 @@ def _case(
         gain_crossovers,
         phase_crossovers,
         own_roots if complete else None,
-        _notices(found, verdict, case),
+        _notices(analysis.brackets, verdict, case),
     )
 
 
@@ -217,7 +199,7 @@ def _peak_readings(peaks: Peaks, case: int) -> dict[str, Reading]:
     }
 
 
-def _notices(found: Found, verdict: Stability, case: int) -> tuple[str, ...]:
+def _notices(found: Isolated, verdict: Stability, case: int) -> tuple[str, ...]:
     notices = [verdict.notice] if verdict.notice else []
     end = float(found.listed_up_to[case])
     if math.isfinite(end):

@@ -7,13 +7,12 @@ from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
-from numpy.typing import NDArray
 
 from engine.loop.gain_phase import gain_and_phase
 from engine.loop.loop_set import LoopSet
 from engine.loop.reach import Reach, reach_of
-from engine.loop.sections import Sections, in_series, sections_of
-from engine.loop.slope_bounds import UNDAMPED, gain_slope_bounds, phase_slope_bounds, undamped_jumps
+from engine.loop.sections import BoolArray, Sections, in_series, sections_of
+from engine.loop.slope_bounds import UNDAMPED, gain_slope_bounds, phase_slope_bounds, steepest, undamped_jumps
 from engine.model.factored import Factored, FloatArray
 
 _PER_DECADE = 56
@@ -28,17 +27,18 @@ _COARSEST = 0.05
 
 @dataclass(frozen=True, eq=False)
 class Nodes:
-    """One model set sampled at (n,) increasing frequencies, with proven slope bounds between them."""
+    """One model set sampled at (n,) increasing frequencies, with proven bounds of the slopes between them."""
 
     omega_rad_s: FloatArray
     gain: FloatArray
     """(c, n) ln|L|."""
     phase: FloatArray
     """(c, n) [rad]."""
-    gain_slope: tuple[FloatArray, FloatArray]
-    """(c, n−1) lower and upper bound of d ln|L|/d ln ω."""
-    phase_slope: tuple[FloatArray, FloatArray]
-    jump: NDArray[np.bool_]
+    gain_steepness: FloatArray
+    """(c, n−1) bound of |d ln|L|/d ln ω|."""
+    phase_steepness: FloatArray
+    """(c, n−1) bound of |d phase/d ln ω|."""
+    jump: BoolArray
     """(c, n−1) the interval is nothing but the passage of an undamped pair."""
 
 
@@ -60,7 +60,7 @@ class Sampled:
 class _PlantPart:
     sections: Sections
     nodes: Nodes
-    """Slopes and jumps have n+1 columns: with the interval below the first node and the one above the last."""
+    """Bounds and jumps have n+1 columns: with the interval below the first node and the one above the last."""
     undamped: tuple[float, ...]
     """Natural frequencies of undamped pairs of plants and compensator: no node may stand on one [rad/s]."""
 
@@ -97,8 +97,8 @@ def _plant_part(plants: tuple[Factored, ...], avoided: tuple[float, ...]) -> _Pl
             omega,
             gain,
             phase,
-            gain_slope_bounds(spread, guarded),
-            phase_slope_bounds(spread, guarded),
+            _largest_size(gain_slope_bounds(spread, guarded)),
+            _largest_size(phase_slope_bounds(spread, guarded)),
             undamped_jumps(spread, guarded),
         ),
         undamped,
@@ -125,17 +125,21 @@ def _fresh_points(part: _PlantPart, compensator: Sections, reach: Reach) -> Floa
     return _clear_of(np.unique(np.concatenate(pieces)), part.undamped) if pieces else np.empty(0)
 
 
+def _largest_size(bounds: tuple[FloatArray, FloatArray]) -> FloatArray:
+    return np.maximum(np.abs(bounds[0]), np.abs(bounds[1]))
+
+
 def _merged(part: _PlantPart, compensator: Sections, fresh: FloatArray) -> tuple[Nodes, FloatArray]:
     own = part.nodes
     cases = own.gain.shape[0]
     omega, gain, phase = own.omega_rad_s, own.gain, own.phase
     if len(fresh):
         new_gain, new_phase = gain_and_phase(part.sections.spread(), np.broadcast_to(fresh, (cases, len(fresh))))
-        omega = np.concatenate([omega, fresh])
-        order = np.argsort(omega, kind="stable")
-        omega = omega[order]
-        order = order[np.concatenate([[True], omega[1:] > omega[:-1]])]
-        omega = np.concatenate([own.omega_rad_s, fresh])[order]
+        both = np.concatenate([omega, fresh])
+        order = np.argsort(both, kind="stable")
+        omega = both[order]
+        first = np.concatenate([[True], omega[1:] > omega[:-1]])
+        omega, order = omega[first], order[first]
         gain = np.concatenate([gain, new_gain], axis=1)[:, order]
         phase = np.concatenate([phase, new_phase], axis=1)[:, order]
     spread = compensator.spread()
@@ -143,18 +147,21 @@ def _merged(part: _PlantPart, compensator: Sections, fresh: FloatArray) -> tuple
     own_gain, own_phase = gain_and_phase(spread, row)
     # A piece of an interval keeps the bounds of the whole: looser, but free.
     parent = np.searchsorted(own.omega_rad_s, omega[:-1], side="right")
-    gain_low, gain_high = gain_slope_bounds(spread, row)
-    phase_low, phase_high = phase_slope_bounds(spread, row)
-    jump = own.jump[:, parent] | undamped_jumps(spread, row)
+    steep = steepest(spread, row)
+    jump = own.jump[:, parent]
+    if part.undamped:
+        jump = jump | undamped_jumps(spread, row)
     phase = phase + own_phase
-    both_negative = (part.sections.turn + compensator.turn < -4.0)[:, None]
+    negative = part.sections.turn + compensator.turn < -4.0
+    if negative.any():
+        phase[negative] += 2.0 * math.pi
     return (
         Nodes(
             omega,
             gain + own_gain,
-            np.where(both_negative, phase + 2.0 * math.pi, phase),
-            (own.gain_slope[0][:, parent] + gain_low, own.gain_slope[1][:, parent] + gain_high),
-            (own.phase_slope[0][:, parent] + phase_low, own.phase_slope[1][:, parent] + phase_high),
+            phase,
+            own.gain_steepness[:, parent] + steep,
+            own.phase_steepness[:, parent] + steep,
             jump,
         ),
         own_gain,

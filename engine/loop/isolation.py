@@ -14,6 +14,7 @@ from typing import Literal, TypeAlias
 import numpy as np
 
 from engine.loop.gain_phase import gain_and_phase
+from engine.loop.grid import Sampled
 from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.loop.slope_bounds import gain_slope_bounds, phase_slope_bounds
 from engine.model.factored import FloatArray
@@ -33,15 +34,22 @@ class Brackets:
     left: FloatArray
     right: FloatArray
     level: FloatArray
+    """0 for the gain; turns from −180° for the phase."""
+    start: FloatArray
+    """Where the chord meets the level."""
+    rising: BoolArray
 
     @staticmethod
     def joined(parts: list[Brackets]) -> Brackets:
-        return Brackets(
-            np.concatenate([part.case for part in parts]),
-            np.concatenate([part.left for part in parts]),
-            np.concatenate([part.right for part in parts]),
-            np.concatenate([part.level for part in parts]),
-        )
+        if len(parts) == 1:
+            return parts[0]
+        return Brackets(*(np.concatenate([getattr(part, name) for part in parts]) for name in _BRACKET_FIELDS))
+
+    def where(self, chosen: BoolArray | IntArray) -> Brackets:
+        return Brackets(*(getattr(self, name)[chosen] for name in _BRACKET_FIELDS))
+
+
+_BRACKET_FIELDS = ("case", "left", "right", "level", "start", "rising")
 
 
 @dataclass(frozen=True, eq=False)
@@ -73,36 +81,43 @@ def turns(phase: FloatArray) -> FloatArray:
     return (phase + math.pi) / TURN
 
 
-def isolated(
-    loop: Sections,
-    omega: FloatArray,
-    y: FloatArray,
-    slopes: tuple[FloatArray, FloatArray],
-    wanted: BoolArray,
-    jump: BoolArray,
-    kind: Kind,
-) -> tuple[Brackets, BoolArray]:
-    noise = noise_of(loop, kind)
-    low, high = slopes
-    y_left, y_right = y[:, :-1], y[:, 1:]
+def isolated(samples: Sampled, wanted: BoolArray, kind: Kind) -> tuple[Brackets, BoolArray]:
+    """Brackets around every crossing in the wanted (c, n−1) intervals; (c,) whether the curve rests on the level."""
+    loop, nodes = samples.loop, samples.nodes
+    omega = nodes.omega_rad_s
     step = np.log(omega[1:] / omega[:-1])
-    bottom, top = _cone(y_left, y_right, low, high, step)
-    open_ = wanted & _holds_level(bottom, top, kind)
+    if kind == "gain":
+        y, steep = nodes.gain, nodes.gain_steepness
+        off = np.abs(y)
+        near = off[:, :-1] + off[:, 1:] <= steep * step
+        open_ = wanted & (near | ((y[:, :-1] < 0) != (y[:, 1:] < 0)))
+    else:
+        y, steep = turns(nodes.phase), nodes.phase_steepness / TURN
+        cell = np.floor(y)
+        off = y - cell
+        total = off[:, :-1] + off[:, 1:]
+        near = np.minimum(total, 2.0 - total) <= steep * step
+        open_ = wanted & (near | (cell[:, :-1] != cell[:, 1:])) & ~nodes.jump
     flat = np.zeros(y.shape[0], bool)
-    if not open_.any():
-        return Brackets.joined([no_brackets()]), flat
     case, column = np.nonzero(open_)
-    todo = _Intervals(
-        case,
-        omega[column],
-        omega[column + 1],
-        y_left[case, column],
-        y_right[case, column],
+    if not len(case):
+        return no_brackets(), flat
+    ends = np.stack([omega[column], omega[column + 1]], axis=1)
+    low, high = _bounds(loop.at(case).spread(), ends, kind)
+    low, high = low[:, 0], high[:, 0]
+    if kind == "gain" and nodes.jump.any():
         # The passage of an undamped pair is no place for a hidden pair of crossings: let the ends decide.
-        np.where(jump[case, column], 0.0, low[case, column]),
-        np.where(jump[case, column], 0.0, high[case, column]),
-    )
-    return _settled(loop, todo, noise, kind, flat)
+        jump = nodes.jump[case, column]
+        low, high = np.where(jump, 0.0, low), np.where(jump, 0.0, high)
+    todo = _Intervals(case, ends[:, 0], ends[:, 1], y[case, column], y[case, column + 1], low, high)
+    return _settled(loop, todo, noise_of(loop, kind), kind, flat)
+
+
+def _bounds(own: Sections, nodes: FloatArray, kind: Kind) -> tuple[FloatArray, FloatArray]:
+    if kind == "gain":
+        return gain_slope_bounds(own, nodes)
+    low, high = phase_slope_bounds(own, nodes)
+    return low / TURN, high / TURN
 
 
 def _settled(
@@ -112,24 +127,30 @@ def _settled(
     found = [no_brackets()]
     for _ in range(_ROUNDS):
         step = np.log(todo.right / todo.left)
+        monotone = (todo.low >= 0) | (todo.high <= 0)
+        bottom, top = _cone(todo.y_left, todo.y_right, todo.low, todo.high, step)
         tiny = noise[todo.case]
+        near = _holds_level(bottom - tiny, top + tiny, kind)
+        if not near.all():
+            todo, step, monotone, tiny = todo.where(near), step[near], monotone[near], tiny[near]
         travel = np.maximum(np.abs(todo.low), np.abs(todo.high)) * step
         still = _on_level(todo, tiny, kind) & (travel <= tiny)
-        resting = still & ((step > 1e-4) | (todo.low == todo.high))
-        flat[todo.case[resting]] = True
-        found.append(_touching_nodes(todo.where(~resting), noise, kind))
-        monotone = (todo.low >= 0) | (todo.high <= 0)
+        if still.any():
+            resting = still & ((step > 1e-4) | (todo.low == todo.high))
+            flat[todo.case[resting]] = True
+            found.append(_touching_nodes(todo.where(~resting), noise, kind))
+        else:
+            found.append(_touching_nodes(todo, noise, kind))
         found.append(_brackets_of(todo.where(monotone), kind))
-        bottom, top = _cone(todo.y_left, todo.y_right, todo.low, todo.high, step)
-        rest = ~monotone & _holds_level(bottom, top, kind)
-        todo = todo.where(rest & ~still & (step > 1e-15))
-        if not len(todo.case):
+        rest = ~monotone & ~still & (step > 1e-15)
+        if not rest.any():
             break
-        todo = _without_flat(_split(loop, todo, kind), noise, kind, flat)
+        todo = _without_flat(_split(loop, todo.where(rest), kind), noise, kind, flat)
     result = Brackets.joined(found)
     # Where the curve rests on the level, its single nodes are no touching points.
-    single = (result.left < result.right) | ~flat[result.case]
-    return Brackets(result.case[single], result.left[single], result.right[single], result.level[single]), flat
+    if not flat.any():
+        return result, flat
+    return result.where((result.left < result.right) | ~flat[result.case]), flat
 
 
 def _without_flat(pieces: _Intervals, noise: FloatArray, kind: Kind, flat: BoolArray) -> _Intervals:
@@ -182,17 +203,21 @@ def noise_of(loop: Sections, kind: Kind) -> FloatArray:
 def _brackets_of(part: _Intervals, kind: Kind) -> Brackets:
     """One bracket per level between the ends of intervals in which the curve is monotone."""
     if kind == "gain":
-        below_left, below_right = part.y_left < 0, part.y_right < 0
-        chosen = below_left != below_right
-        return Brackets(part.case[chosen], part.left[chosen], part.right[chosen], np.zeros(np.count_nonzero(chosen)))
-    first, last = np.floor(part.y_left), np.floor(part.y_right)
-    count = np.abs(last - first).astype(np.int64)
-    if not count.any():
-        return no_brackets()
-    index = np.repeat(np.arange(len(count)), count)
-    offset = np.arange(len(index)) - np.repeat(np.cumsum(count) - count, count)
-    level = np.minimum(first, last)[index] + 1.0 + offset
-    return Brackets(part.case[index], part.left[index], part.right[index], level)
+        index = np.nonzero((part.y_left < 0) != (part.y_right < 0))[0]
+        level = np.zeros(len(index))
+    else:
+        first, last = np.floor(part.y_left), np.floor(part.y_right)
+        count = np.abs(last - first).astype(np.int64)
+        index = np.repeat(np.arange(len(count)), count)
+        offset = np.arange(len(index)) - np.repeat(np.cumsum(count) - count, count)
+        level = np.minimum(first, last)[index] + 1.0 + offset
+    left, right = part.left[index], part.right[index]
+    y_left, y_right = part.y_left[index], part.y_right[index]
+    with np.errstate(invalid="ignore", divide="ignore"):
+        share = (level - y_left) / (y_right - y_left)
+    share = np.where(np.isfinite(share), np.minimum(np.maximum(share, 0.0), 1.0), 0.5)
+    start = left * np.exp(np.log(right / left) * share)
+    return Brackets(part.case[index], left, right, level, start, y_right > y_left)
 
 
 def _touching_nodes(part: _Intervals, noise: FloatArray, kind: Kind) -> Brackets:
@@ -204,7 +229,8 @@ def _touching_nodes(part: _Intervals, noise: FloatArray, kind: Kind) -> Brackets
         return no_brackets()
     at = np.concatenate([part.left[left], part.right[right]])
     y = np.concatenate([part.y_left[left], part.y_right[right]])
-    return Brackets(np.concatenate([part.case[left], part.case[right]]), at, at, np.rint(y))
+    case = np.concatenate([part.case[left], part.case[right]])
+    return Brackets(case, at, at, np.rint(y), at, np.zeros(len(at), bool))
 
 
 def _split(loop: Sections, part: _Intervals, kind: Kind) -> _Intervals:
@@ -215,9 +241,7 @@ def _split(loop: Sections, part: _Intervals, kind: Kind) -> _Intervals:
     gain, phase = gain_and_phase(own, inner)
     y = gain if kind == "gain" else turns(phase)
     y = np.concatenate([part.y_left[:, None], y, part.y_right[:, None]], axis=1)
-    low, high = (gain_slope_bounds if kind == "gain" else phase_slope_bounds)(own, nodes)
-    if kind == "phase":
-        low, high = low / TURN, high / TURN
+    low, high = _bounds(own, nodes, kind)
     return _Intervals(
         np.repeat(part.case, _PIECES),
         nodes[:, :-1].ravel(),
@@ -230,4 +254,5 @@ def _split(loop: Sections, part: _Intervals, kind: Kind) -> _Intervals:
 
 
 def no_brackets() -> Brackets:
-    return Brackets(np.empty(0, np.int64), np.empty(0), np.empty(0), np.empty(0))
+    nothing = np.empty(0)
+    return Brackets(np.empty(0, np.int64), nothing, nothing, nothing, nothing, np.empty(0, bool))

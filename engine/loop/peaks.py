@@ -9,11 +9,11 @@ import numpy as np
 
 from engine.loop.closed_loop_gain import Points, Quantity, log_level
 from engine.loop.closed_loop_roots import ClosedLoopRoots
-from engine.loop.crossings import Found
+from engine.loop.crossings import Isolated
 from engine.loop.grid import Sampled
 from engine.loop.limits import Limits, limits_of
 from engine.loop.narrow import narrow_places
-from engine.loop.polish import Tasks, joined_tasks, polished
+from engine.loop.polish import Tasks, joined_tasks
 from engine.loop.ripples import ripple_tasks
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
@@ -37,19 +37,20 @@ class Peaks:
     """(c,) lowest ω with |T| = |T(0)|/√2; nan where there is none."""
 
 
-def find_peaks(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Peaks:
-    """The suprema and the bandwidth of every case."""
+def peak_tasks(samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots) -> tuple[Tasks, Limits]:
+    """What is to be polished for the suprema and the bandwidth of every case, and the limits they compete with."""
     rows = _sampled_levels(samples)
-    cases = rows.shape[1]
+    highest = rows.max(axis=2)
     limits = limits_of(samples)
-    best = np.maximum(limits.at_zero, limits.at_infinity)
-    tasks = joined_tasks(
-        _grid_candidates(samples, rows),
-        _narrow_candidates(samples, found, roots, rows),
-        ripple_tasks(samples, PEAKS, np.maximum(rows.max(axis=2), best)),
-        _bandwidth_tasks(samples, rows[1], limits),
-    )
-    omega, level = polished(samples, tasks)
+    parts = [_grid_candidates(samples, rows, highest), _narrow_candidates(samples, brackets, roots, highest)]
+    if samples.loop.dead_time_s.any():
+        parts.append(ripple_tasks(samples, PEAKS, np.maximum(highest, limits.best)))
+    return joined_tasks(*parts, _bandwidth_tasks(samples, rows[1], limits)), limits
+
+
+def settled_peaks(tasks: Tasks, limits: Limits, omega: FloatArray, level: FloatArray) -> Peaks:
+    """The suprema and bandwidths from the polished tasks."""
+    cases = limits.best.shape[1]
     at = np.where(limits.at_zero >= limits.at_infinity, 0.0, math.inf)
     peak = np.isnan(tasks.level)
     # Ordered by value, the greatest of each row is written last. A supremum that the limit reaches as well
@@ -61,51 +62,56 @@ def find_peaks(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> Peaks:
     top_at = np.zeros_like(top)
     top[row, case] = level[order]
     top_at[row, case] = omega[order]
-    inner = top > best + 1e-13
+    inner = top > limits.best + 1e-13
     bandwidth = np.full(cases, math.nan)
     bandwidth[tasks.case[~peak]] = omega[~peak]
-    return Peaks(np.where(inner, top, best), np.where(inner, top_at, at), bandwidth)
+    return Peaks(np.where(inner, top, limits.best), np.where(inner, top_at, at), bandwidth)
 
 
 def _sampled_levels(samples: Sampled) -> FloatArray:
     """(4, c, n) ln of the four gains on the grid."""
-    gain = np.clip(samples.nodes.gain, -_LARGE, _LARGE)
+    gain = np.minimum(np.maximum(samples.nodes.gain, -_LARGE), _LARGE)
     size = np.exp(gain)
     turned = np.cos(samples.nodes.phase)
-    apart = (1.0 - size) ** 2
-    twice = 2.0 * size
+    square = 1.0 + size * size
+    twice = (2.0 * size) * turned
     rows = np.empty((4, *gain.shape))
-    with np.errstate(divide="ignore"):
-        rows[0] = -0.5 * np.log(apart + twice * (1.0 + turned))
-        rows[3] = 0.5 * np.log(apart + twice * (1.0 - turned)) + rows[0]
-    rows[1] = rows[0] + gain
-    rows[2] = rows[0] + samples.compensator_gain
+    # Rounding near −1 (1e-8 in |1 + L|) is all right here: the polisher is exact.
+    tiny = 1e-16 * square
+    np.log(np.maximum(square + twice, tiny), out=rows[0])
+    rows[0] *= -0.5
+    np.log(np.maximum(square - twice, tiny), out=rows[3])
+    rows[3] *= 0.5
+    rows[3] += rows[0]
+    np.add(rows[0], gain, out=rows[1])
+    np.add(rows[0], samples.compensator_gain, out=rows[2])
     return rows
 
 
-def _grid_candidates(samples: Sampled, rows: FloatArray) -> Tasks:
+def _grid_candidates(samples: Sampled, rows: FloatArray, highest: FloatArray) -> Tasks:
     omega = samples.nodes.omega_rad_s
-    middle = rows[:, :, 1:-1]
-    highest = rows.max(axis=2, keepdims=True)
-    local = (middle >= rows[:, :, :-2]) & (middle > rows[:, :, 2:]) & (middle >= highest + _WORTH_POLISHING)
-    quantity, case, column = np.nonzero(local)
+    quantity, case, column = np.nonzero(rows >= (highest + _WORTH_POLISHING)[:, :, None])
+    here = rows[quantity, case, column]
+    inside = (column > 0) & (column < len(omega) - 1)
+    before = rows[quantity, case, np.maximum(column - 1, 0)]
+    after = rows[quantity, case, np.minimum(column + 1, len(omega) - 1)]
+    local = np.nonzero(inside & (here >= before) & (here > after))[0]
+    quantity, case, column = quantity[local], case[local], column[local]
+    before, here, after = before[local], here[local], after[local]
     if len(column) > _MOST_PER_ROW * rows.shape[0] * rows.shape[1] // 2:
-        quantity, case, column = _greatest_per_row(rows, quantity, case, column + 1)
-        column = column - 1
-    column = column + 1
+        kept = _greatest_per_row(rows, quantity, case, column)
+        quantity, case, column = quantity[kept], case[kept], column[kept]
+        before, here, after = before[kept], here[kept], after[kept]
     # The parabola through three samples (in the index, for speed) starts Newton's method close by.
-    before, here, after = (rows[quantity, case, column + shift] for shift in (-1, 0, 1))
     with np.errstate(invalid="ignore", over="ignore"):
         lean = 0.5 * (before - after) / np.minimum(before - 2.0 * here + after, -1e-300)
-    lean = np.where(np.isfinite(lean), np.clip(lean, -0.9, 0.9), 0.0)
+    lean = np.where(np.isfinite(lean), np.minimum(np.maximum(lean, -0.9), 0.9), 0.0)
     left, mid, right = omega[column - 1], omega[column], omega[column + 1]
     start = mid * np.where(lean > 0, right / mid, mid / left) ** lean
-    return _peak_tasks(quantity, case, left, start, right)
+    return _extremes(quantity, case, left, start, right)
 
 
-def _greatest_per_row(
-    rows: FloatArray, quantity: IntArray, case: IntArray, column: IntArray
-) -> tuple[IntArray, IntArray, IntArray]:
+def _greatest_per_row(rows: FloatArray, quantity: IntArray, case: IntArray, column: IntArray) -> IntArray:
     order = np.argsort(-rows[quantity, case, column], kind="stable")
     key = quantity * rows.shape[1] + case
     kept: list[int] = []
@@ -115,23 +121,22 @@ def _greatest_per_row(
         if count < _MOST_PER_ROW:
             seen[int(key[item])] = count + 1
             kept.append(item)
-    chosen = np.array(kept, dtype=np.int64)
-    return quantity[chosen], case[chosen], column[chosen]
+    return np.array(kept, dtype=np.int64)
 
 
-def _narrow_candidates(samples: Sampled, found: Found, roots: ClosedLoopRoots, rows: FloatArray) -> Tasks:
+def _narrow_candidates(samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots, highest: FloatArray) -> Tasks:
     """The narrow places at which some gain comes near its greatest sample or exceeds it."""
-    case, at, left, right = narrow_places(samples, found, roots)
+    case, at, left, right = narrow_places(samples, brackets, roots)
     count = len(PEAKS)
     quantity = np.repeat(np.array(PEAKS, dtype=np.int64), len(at))
     case = np.tile(case, count)
     at, left, right = np.tile(at, count), np.tile(left, count), np.tile(right, count)
     if len(at):
         level = log_level(Points.of(samples, quantity, case), at)
-        worth = level > rows.max(axis=2)[quantity, case] + _WORTH_POLISHING
+        worth = level > highest[quantity, case] + _WORTH_POLISHING
         quantity, case = quantity[worth], case[worth]
         at, left, right = at[worth], left[worth], right[worth]
-    return _peak_tasks(quantity, case, left, at, right)
+    return _extremes(quantity, case, left, at, right)
 
 
 def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> Tasks:
@@ -153,6 +158,6 @@ def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> Ta
     return Tasks(quantity, case, left, start, right, goal[case], np.ones(count), np.zeros(count))
 
 
-def _peak_tasks(quantity: IntArray, case: IntArray, left: FloatArray, start: FloatArray, right: FloatArray) -> Tasks:
+def _extremes(quantity: IntArray, case: IntArray, left: FloatArray, start: FloatArray, right: FloatArray) -> Tasks:
     count = len(case)
     return Tasks(quantity, case, left, start, right, np.full(count, math.nan), np.ones(count), np.zeros(count))

@@ -23,9 +23,9 @@ class Tasks:
     start: FloatArray
     right: FloatArray
     level: FloatArray
-    """The value to be met on a falling stretch; nan where an extreme is sought."""
+    """The value to be met; nan where an extreme is sought."""
     sign: FloatArray
-    """+1 for a greatest, −1 for a least value."""
+    """+1 for a greatest value or a level met in falling, −1 for a least value or a level met in rising."""
     tilt: FloatArray
     """The extreme is that of the quantity less tilt·ln ω."""
 
@@ -52,10 +52,10 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
         level, slope, bend = level_slope_bend(points, omega)
         height = tasks.sign * (level - tasks.tilt * np.log(omega) if tilted else level)
         slope, bend = tasks.sign * (slope - tasks.tilt), tasks.sign * bend
+        miss = tasks.sign * (level - tasks.level)
         better = (height > best) | to_level
         best, best_omega = np.where(better, height, best), np.where(better, omega, best_omega)
-        miss = level - tasks.level
-        # A level is met on a falling stretch: above it, the place lies further right.
+        # Seen as falling, a level lies further right as long as the value is above it.
         onward = np.where(to_level, miss > 0, slope > 0)
         left, right = np.where(onward, omega, left), np.where(onward, right, omega)
         with np.errstate(divide="ignore", invalid="ignore", over="ignore"):

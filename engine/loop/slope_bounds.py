@@ -68,6 +68,20 @@ def phase_slope_bounds(model: Sections, nodes: FloatArray) -> tuple[FloatArray, 
     return low, high
 
 
+def steepest(model: Sections, nodes: FloatArray) -> FloatArray:
+    """Bound of |d ln L / d ln ω|, gain and phase alike, in every interval; coarse but quick.
+
+    Each root r adds s/(s − r), whose size is at most ω over the distance of jω from r.
+    """
+    left, right = nodes[..., :-1], nodes[..., 1:]
+    beyond = np.maximum(left - model.root.imag, model.root.imag - right)
+    distance = np.hypot(model.root.real, np.maximum(beyond, 0.0, out=beyond))
+    with np.errstate(divide="ignore"):
+        share = np.abs(model.root_weight) / distance
+    total: FloatArray = np.abs(model.integrators) + (np.add.reduce(share, axis=0) + model.dead_time_s) * right
+    return total
+
+
 def undamped_jumps(model: Sections, nodes: FloatArray) -> NDArray[np.bool_]:
     """(…, n−1): True where an interval is nothing but the passage of an undamped pair."""
     passed = np.zeros(np.broadcast_shapes(model.log_gain.shape, nodes.shape), bool)[..., 1:]

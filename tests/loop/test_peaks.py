@@ -46,7 +46,8 @@ def test_needle_peaks_near_the_boundary(short):
     s = 1j * light.imag
     want = abs(s * (s + 1) ** 2) / (abs(light.real) * np.prod([abs(s - r) for r in others]))
     np.testing.assert_allclose(number(case, "peak_sensitivity"), want, rtol=5 * short)
-    assert number(case, "peak_sensitivity") >= want * (1 - 1e-12)
+    # L is known to an ulp or two, and 1 + L to as much times the peak.
+    assert number(case, "peak_sensitivity") >= want * (1 - 1e-15 * want)
 
 
 # H-infinity norm by eigenvalues of a Hamiltonian matrix (slycot's ab13dd) on the realisation of the closed loop.
