@@ -29,65 +29,73 @@ def _findings(page: Page, where: str) -> list[str]:
     ]
 
 
-@pytest.fixture(params=["light", "dark"])
-def page(request: pytest.FixtureRequest, open_design: Open, bench_design: dict[str, Any]) -> Page:
-    """The workbench on either ground."""
-    opened = open_design(bench_design, color_scheme=request.param)
-    expect(opened.locator("html")).to_have_attribute("data-theme", request.param)
+def _on(ground: str, open_design: Open, design: dict[str, Any]) -> Page:
+    opened = open_design(design, color_scheme=ground)
+    expect(opened.locator("html")).to_have_attribute("data-theme", ground)
     return opened
 
 
-def test_the_page_has_no_serious_finding(page: Page) -> None:
-    row(page, 0).locator(".requirement-measure").click()
-    page.get_by_role("button", name="pin", exact=True).click()
-    assert _findings(page, "body") == []
+@pytest.fixture
+def page(open_design: Open, bench_design: dict[str, Any]) -> Page:
+    """The workbench on the light ground."""
+    return _on("light", open_design, bench_design)
 
 
-@pytest.mark.parametrize("tab", ["stages", "plant cases", "scenario", "now and pinned"])
-def test_no_tab_has_a_serious_finding(page: Page, tab: str) -> None:
-    page.get_by_role("button", name="pin", exact=True).click()
-    open_tab(page, tab)
-    assert _findings(page, "#drawer") == []
+@pytest.fixture(params=["light", "dark"])
+def either(request: pytest.FixtureRequest, open_design: Open, bench_design: dict[str, Any]) -> Page:
+    """The workbench on either ground."""
+    return _on(request.param, open_design, bench_design)
 
 
-@pytest.mark.parametrize("dialog", ["share", "hand over", "open", "demos"])
-def test_no_dialog_has_a_serious_finding(page: Page, dialog: str) -> None:
-    shown = call_up(page, dialog)
-    if dialog == "share":
-        shown.get_by_role("button", name="make a link").click()
-        shown.get_by_role("button", name="copy the link", exact=True).wait_for()
-    if dialog == "hand over":
-        expect(shown.locator(".strong")).to_be_enabled()
-    if dialog == "open":
-        shown.get_by_role("button", name="open what was pasted").click()
-        expect(shown.locator(".file-faults")).to_contain_text("not opened")
-    assert _findings(page, "dialog[open]") == []
+def test_page_and_tabs_have_no_serious_finding(either: Page) -> None:
+    row(either, 0).locator(".requirement-measure").click()
+    assert _findings(either, "body") == []
+    either.get_by_role("button", name="pin", exact=True).click()
+    for tab in ("stages", "plant cases", "scenario", "now and pinned"):
+        open_tab(either, tab)
+        assert _findings(either, "#drawer, #ledger") == []
 
 
-def test_no_editor_has_a_serious_finding(page: Page) -> None:
-    page.get_by_role("button", name="+ add a requirement").click()
-    page.get_by_role("combobox", name="measure").click()
-    assert _findings(page, "dialog[open]") == []
-    page.locator(".measure-option").last.click()
-    page.get_by_label("judged", exact=True).select_option("mask")
-    page.get_by_role("button", name="add requirement").click()
-    assert _findings(page, "dialog[open]") == []
-    page.keyboard.press("Escape")
+def test_no_dialog_has_a_serious_finding(either: Page) -> None:
+    for dialog in ("share", "hand over", "open", "demos"):
+        shown = call_up(either, dialog)
+        if dialog == "share":
+            shown.get_by_role("button", name="make a link").click()
+            shown.get_by_role("button", name="copy the link", exact=True).wait_for()
+        if dialog == "hand over":
+            expect(shown.locator(".strong")).to_be_enabled()
+        if dialog == "open":
+            shown.get_by_role("button", name="open what was pasted").click()
+            expect(shown.locator(".file-faults")).to_contain_text("not opened")
+        assert _findings(either, "dialog[open]") == []
+        either.keyboard.press("Escape")
+        expect(shown).to_have_count(0)
 
-    open_tab(page, "plant cases")
-    page.get_by_role("button", name="edit loaded").click()
+
+def test_no_editor_has_a_serious_finding(either: Page) -> None:
+    either.get_by_role("button", name="+ add a requirement").click()
+    either.get_by_role("combobox", name="measure").click()
+    assert _findings(either, "dialog[open]") == []
+    either.locator(".measure-option").last.click()
+    either.get_by_label("judged", exact=True).select_option("mask")
+    either.get_by_role("button", name="add requirement").click()
+    assert _findings(either, "dialog[open]") == []
+    either.keyboard.press("Escape")
+
+    open_tab(either, "plant cases")
+    either.get_by_role("button", name="edit loaded").click()
     for form in ("coefficients", "zeros and poles", "state space", "formula"):
-        page.locator("dialog[open] .segment", has_text=form).click()
-        assert _findings(page, "dialog[open]") == []
-    page.get_by_label("formula in s").fill("5/(s")
-    expect(page.locator("dialog[open] .caret")).to_be_visible()
-    assert _findings(page, "dialog[open]") == []
-    page.keyboard.press("Escape")
+        either.locator("dialog[open] .segment", has_text=form).click()
+        assert _findings(either, "dialog[open]") == []
+    either.get_by_label("formula in s").fill("5/(s")
+    expect(either.locator("dialog[open] .caret")).to_be_visible()
+    assert _findings(either, "dialog[open]") == []
+    either.keyboard.press("Escape")
 
-    open_tab(page, "stages")
-    page.get_by_role("button", name="a stage by its numbers").click()
-    page.get_by_role("button", name="add stage").click()
-    assert _findings(page, "dialog[open]") == []
+    open_tab(either, "stages")
+    either.get_by_role("button", name="a stage by its numbers").click()
+    either.get_by_role("button", name="add stage").click()
+    assert _findings(either, "dialog[open]") == []
 
 
 def test_controls_are_large_enough_to_hit(page: Page) -> None:

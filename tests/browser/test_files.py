@@ -7,7 +7,6 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
-import pytest
 from playwright.sync_api import Page, expect
 
 from tests.browser.saved import call_up, row, saved_design
@@ -70,16 +69,15 @@ BAD_FILES = [
 ]
 
 
-@pytest.mark.parametrize(("text", "words"), BAD_FILES)
-def test_a_bad_file_is_refused_in_one_line(
-    text: str, words: str, open_design: Open, bench_design: dict[str, Any]
-) -> None:
+def test_a_bad_file_is_refused_in_one_line(open_design: Open, bench_design: dict[str, Any]) -> None:
     page = open_design(bench_design)
-    page.evaluate(_DROP, ["broken.json", text])
-    faults = page.locator("dialog[open] .file-faults")
-    expect(faults).to_contain_text("broken.json was not opened; your work is as it was.")
-    expect(faults).to_contain_text(words)
-    page.keyboard.press("Escape")
+    for text, words in BAD_FILES:
+        page.evaluate(_DROP, ["broken.json", text])
+        faults = page.locator("dialog[open] .file-faults")
+        expect(faults).to_contain_text("broken.json was not opened; your work is as it was.")
+        expect(faults).to_contain_text(words)
+        page.keyboard.press("Escape")
+        expect(page.locator("dialog[open]")).to_have_count(0)
     assert saved_design(page) == bench_design
 
 
