@@ -192,7 +192,7 @@ def test_an_unstable_loop_is_called_so_on_the_plots(open_design: Open, bench_des
     bench_design["compensator"] = {"gain": 200.0, "stages": [{"kind": "real_pole", "corner_rad_s": 1.0}]}
     page = open_design(bench_design)
     for root in ("#charts", "#responses"):
-        expect(page.locator(f"{root} .unstable")).to_contain_text("closed loop unstable")
+        expect(page.locator(f"{root} .unstable")).to_contain_text("unstable on every case")
 
 
 def test_signals_and_units_stand_on_the_responses(open_design: Open, bench_design: dict[str, Any]) -> None:

@@ -126,10 +126,10 @@ function chartTitles(/** @type {SVGElement} */ parent) {
   parent.append(unstable);
   return {
     draw(/** @type {Scene} */ scene) {
-      const { left, gain: upper, phase: lower } = scene.geometry;
+      const { left, right, gain: upper, phase: lower } = scene.geometry;
       set(gain, { x: left, y: upper.top - 10 });
       set(phase, { x: left, y: lower.top - 10 });
-      set(unstable, { x: left + 10, y: upper.bottom - 12, text: unstableWords(scene.frame.assessment.cases) });
+      set(unstable, { x: left + 10, y: upper.bottom - 12, text: unstableWords(scene.frame.assessment.cases, right - left - 20) });
     },
   };
 }

@@ -73,7 +73,7 @@ export function responses(root, store) {
     stage.dress(geometry.width, geometry.height, () => summary(store));
     surface.draw();
     titles.draw(geometry);
-    set(unstable, { x: geometry.left + 8, y: geometry.plots[0].bottom - 10, text: unstableWords(store.lastGood.assessment.cases) });
+    set(unstable, { x: geometry.left + 8, y: geometry.plots[0].bottom - 10, text: unstableWords(store.lastGood.assessment.cases, geometry.right - geometry.left - 16) });
     const unit = timeUnit(/** @type {any} */ (view.range)[1]).text;
     units.forEach((node, index) => set(node, { x: geometry.right, y: geometry.plots[index].bottom + 12, text: unit }));
     mark.draw(picture);

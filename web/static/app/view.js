@@ -124,6 +124,10 @@ export function fittedResponse(time_s, array, taken, range, also = []) {
   least = Math.min(0, least);
   most = Math.max(0, most);
   const span = most - least || 1;
+  // The nominal is shown even where it is unstable and grows: as much of it as does not flatten the rest.
+  const nominal = extent(time_s, [curveOf(array, 0)], range[0], range[1]);
+  least = Math.min(least, Math.max(nominal[0], least - span));
+  most = Math.max(most, Math.min(nominal[1], most + span));
   for (const value of also) {
     if (value > most && value < most + span) most = value;
     if (value < least && value > least - span) least = value;
