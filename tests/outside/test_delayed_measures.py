@@ -25,7 +25,7 @@ LOOPS = {
         20,
     ),
     "zero in the right half plane": (
-        design_of(factored(-0.3, zeros=[2.0], poles=[0, -1.5], dead_time_s=0.4), gain=0.9),
+        design_of(factored(-0.3, zeros=[2.0], poles=[0, -1.5], dead_time_s=0.8), gain=0.9),
         22,
     ),
 }
