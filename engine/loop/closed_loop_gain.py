@@ -127,23 +127,28 @@ def log_level(points: Points, omega_rad_s: FloatArray) -> FloatArray:
 
 
 def level_slope_bend(points: Points, omega_rad_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """ln of each point's quantity, and its first and second derivative in ln ω."""
+    """ln of each point's quantity, and its first and second derivative in ln ω (nan where L is ±1 or infinite).
+
+    The caller silences numpy's warnings about those places.
+    """
     loop, side = points.loop, points.side
     values = factor_values(loop, omega_rad_s)
     gain, phase = summed(loop, omega_rad_s, values)
     S = sensitivity(gain, phase)
-    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        terms = root_terms(loop, omega_rad_s)
-        bends = terms - terms * terms
-        lag = 1j * (loop.dead_time_s * omega_rad_s)
-        first = np.add.reduce(loop.root_weight * terms, axis=0) - loop.integrators - lag
-        second = np.add.reduce(loop.root_weight * bends, axis=0) - lag
-        rate, bend = _by_loop(points, S)
-        slope = (rate * first).real
-        curve = (bend * (first * first) + rate * second).real
-        if side is not None:
-            slope = slope + np.add.reduce(side.root_weight * terms.real, axis=0) - side.integrators
-            curve = curve + np.add.reduce(side.root_weight * bends.real, axis=0)
+    real, imaginary = root_terms(loop, omega_rad_s)
+    bend_real = real - real * real + imaginary * imaginary
+    bend_imaginary = imaginary - 2.0 * real * imaginary
+    weight, lag = loop.root_weight, loop.dead_time_s * omega_rad_s
+    first = (np.add.reduce(weight * real, axis=0) - loop.integrators) + 1j * (
+        np.add.reduce(weight * imaginary, axis=0) - lag
+    )
+    second = np.add.reduce(weight * bend_real, axis=0) + 1j * (np.add.reduce(weight * bend_imaginary, axis=0) - lag)
+    rate, bend = _by_loop(points, S)
+    slope = (rate * first).real
+    curve = (bend * (first * first) + rate * second).real
+    if side is not None:
+        slope = slope + np.add.reduce(side.root_weight * real, axis=0) - side.integrators
+        curve = curve + np.add.reduce(side.root_weight * bend_real, axis=0)
     return _level(points, omega_rad_s, values, gain, phase, S), slope, curve
 
 

@@ -48,7 +48,8 @@ def crossing_tasks(gain: Brackets, phase: Brackets) -> Tasks:
     """The crossings as levels to be met: gain first, then phase; touchings stay where they are."""
     parts = []
     for brackets, quantity in ((gain, Quantity.LOOP), (phase, Quantity.PHASE)):
-        moving = brackets.where(brackets.left < brackets.right)
+        crossing = brackets.left < brackets.right
+        moving = brackets if crossing.all() else brackets.where(crossing)
         count = len(moving.case)
         level = moving.level * TURN - math.pi if quantity == Quantity.PHASE else moving.level
         sign = np.where(moving.rising, -1.0, 1.0)

@@ -50,8 +50,7 @@ def isolate_crossings(samples: Sampled) -> Isolated:
     in_gain = (right > reach.gain_low[:, None]) & (left < reach.gain_high[:, None])
     end, shortened = _end_of_phase_search(samples)
     in_phase = (right > reach.phase_low[:, None]) & (left < end[:, None])
-    gain, flat_gain = isolated(samples, in_gain, "gain")
-    phase, flat_phase = isolated(samples, in_phase, "phase")
+    (gain, flat_gain), (phase, flat_phase) = isolated(samples, in_gain, in_phase)
     listed_up_to = np.where(loop.dead_time_s > 0, end, math.inf)
     return Isolated(gain, phase, flat_gain, flat_phase, listed_up_to, shortened)
 

@@ -5,8 +5,11 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from typing import NamedTuple
 
-from engine.loop.analysis import Analysis, analysis_of
+import numpy as np
+
+from engine.loop.analysis import analysis_of
 from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.crossing_polish import Crossings
 from engine.loop.crossings import LISTED_AT_MOST, Isolated
@@ -23,7 +26,6 @@ from engine.loop.margins import (
     phase_margin,
     signed_distance_deg,
 )
-from engine.loop.peaks import Peaks
 from engine.loop.pole_measures import pole_measures
 from engine.loop.reading import Reading, value, without_value
 from engine.loop.stability import Stability, decide_stability
@@ -76,49 +78,95 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
     is no downward crossing.
     """
     analysis = analysis_of(loops)
-    samples = analysis.samples
-    verdicts = decide_stability(samples, analysis.found, analysis.roots)
-    cases = tuple(_case(analysis, verdict, case) for case, verdict in enumerate(verdicts))
+    samples, found, peaks = analysis.samples, analysis.found, analysis.peaks
+    verdicts = decide_stability(samples, found, analysis.roots)
+    facts = _facts(samples)
+    gains, phases = _by_case(found.gain, loops.count), _by_case(found.phase, loops.count)
+    poles = pole_measures(analysis.roots)
+    suprema = list(
+        zip(peaks.log_value.T.tolist(), peaks.at_rad_s.T.tolist(), peaks.bandwidth_rad_s.tolist(), strict=True)
+    )
+    cases = []
+    for case, verdict in enumerate(verdicts):
+        fact = facts[case]
+        gain_crossovers = tuple(
+            GainCrossover(omega, signed_distance_deg(phase), direction) for omega, _, phase, direction in gains[case]
+        )
+        phase_crossovers = _phase_crossovers(fact, [(omega, gain) for omega, gain, _, _ in phases[case]])
+        readings = error_constants(fact.integrators, fact.low_gain)
+        readings["crossover_rad_s"] = crossover(gain_crossovers)
+        readings["last_crossover_rad_s"] = last_crossover(gain_crossovers)
+        if verdict.stable:
+            up, down = gain_margins(phase_crossovers, _limit_db(fact))
+            readings["phase_margin_deg"] = phase_margin(gain_crossovers)
+            readings["gain_margin_db"], readings["gain_reduction_margin_db"] = up, down
+            readings["delay_margin_s"] = delay_margin(gain_crossovers, _high_gain(fact))
+            readings |= _peak_readings(*suprema[case])
+            readings |= final_errors(fact.integrators, fact.low_gain)
+            readings |= poles[case]
+        else:
+            readings |= dict.fromkeys(_NEED_STABILITY, without_value("unstable", verdict.sentence))
+        notices = _notices(analysis.brackets, verdict, case)
+        own_poles = analysis.roots.roots[case, : analysis.roots.count[case]] if fact.dead_time_s == 0 else None
+        cases.append(
+            CaseFrequency(
+                verdict.stable,
+                verdict.sentence,
+                verdict.unstable_poles,
+                readings,
+                gain_crossovers,
+                phase_crossovers,
+                own_poles,
+                notices,
+            )
+        )
+    nodes = samples.nodes
     return FrequencyView(
-        samples.nodes.omega_rad_s,
-        samples.nodes.gain * DB,
-        samples.nodes.phase * (180.0 / math.pi),
-        cases,
-        analysis.roots,
+        nodes.omega_rad_s, nodes.gain * DB, nodes.phase * (180.0 / math.pi), tuple(cases), analysis.roots
     )
 
 
-def _case(analysis: Analysis, verdict: Stability, case: int) -> CaseFrequency:
-    samples, roots = analysis.samples, analysis.roots
-    gain_crossovers = _gain_crossovers(analysis.found.gain.of(case))
-    phase_crossovers = _phase_crossovers(samples, analysis.found.phase.of(case), case)
-    integrators = int(samples.loop.integrators[case])
-    low_gain = float(samples.loop.low_gain[case])
-    readings = error_constants(integrators, low_gain)
-    own_roots = roots.roots[case, : roots.count[case]]
-    complete = bool(roots.complete[case])
-    readings["crossover_rad_s"] = crossover(gain_crossovers)
-    readings["last_crossover_rad_s"] = last_crossover(gain_crossovers)
-    if verdict.stable:
-        up, down = gain_margins(phase_crossovers, _limit_db(samples, case))
-        readings["phase_margin_deg"] = phase_margin(gain_crossovers)
-        readings["gain_margin_db"], readings["gain_reduction_margin_db"] = up, down
-        readings["delay_margin_s"] = delay_margin(gain_crossovers, _high_gain(samples, case))
-        readings |= _peak_readings(analysis.peaks, case)
-        readings |= final_errors(integrators, low_gain)
-        readings |= pole_measures(own_roots, complete)
-    else:
-        readings |= dict.fromkeys(_NEED_STABILITY, without_value("unstable", verdict.sentence))
-    return CaseFrequency(
-        verdict.stable,
-        verdict.sentence,
-        verdict.unstable_poles,
-        readings,
-        gain_crossovers,
-        phase_crossovers,
-        own_roots if complete else None,
-        _notices(analysis.brackets, verdict, case),
+class _Facts(NamedTuple):
+    """The ends of one case's loop as plain numbers."""
+
+    integrators: int
+    low_gain: float
+    log_gain: float
+    turn: float
+    dead_time_s: float
+    relative_degree: float
+    log_high_gain: float
+    phase_infinite: float
+
+
+def _facts(samples: Sampled) -> list[_Facts]:
+    loop, reach = samples.loop, samples.reach
+    columns = (
+        loop.integrators.astype(np.int64),
+        loop.low_gain,
+        loop.log_gain,
+        loop.turn,
+        loop.dead_time_s,
+        reach.relative_degree,
+        reach.log_high_gain,
+        reach.phase_infinite,
     )
+    return [_Facts(*row) for row in zip(*(column.tolist() for column in columns), strict=True)]
+
+
+def _by_case(points: Crossings, count: int) -> list[list[tuple[float, float, float, int]]]:
+    """(rad/s, ln|L|, phase, direction) of the points of each case, by frequency."""
+    lists: list[list[tuple[float, float, float, int]]] = [[] for _ in range(count)]
+    for case, *point in zip(
+        points.case.tolist(),
+        points.omega_rad_s.tolist(),
+        points.gain.tolist(),
+        points.phase.tolist(),
+        points.direction.tolist(),
+        strict=True,
+    ):
+        lists[case].append((point[0], point[1], point[2], point[3]))
+    return lists
 
 
 _NEED_STABILITY = (
@@ -139,46 +187,27 @@ _NEED_STABILITY = (
 )
 
 
-def _gain_crossovers(points: Crossings) -> tuple[GainCrossover, ...]:
-    return tuple(
-        GainCrossover(omega, signed_distance_deg(phase), direction)
-        for omega, phase, direction in zip(
-            points.omega_rad_s.tolist(), points.phase.tolist(), points.direction.tolist(), strict=True
-        )
-    )
-
-
-def _phase_crossovers(samples: Sampled, points: Crossings, case: int) -> tuple[PhaseCrossover, ...]:
+def _phase_crossovers(fact: _Facts, points: list[tuple[float, float]]) -> tuple[PhaseCrossover, ...]:
     """The crossings at finite frequencies, and L(0) and L(∞) where they are real and negative."""
-    loop, reach = samples.loop, samples.reach
-    listed = [
-        PhaseCrossover(omega, gain * DB)
-        for omega, gain in zip(points.omega_rad_s.tolist(), points.gain.tolist(), strict=True)
-    ]
-    if loop.integrators[case] == 0 and loop.turn[case] != 0:
-        listed.insert(0, PhaseCrossover(0.0, float(loop.log_gain[case]) * DB))
-    still = reach.relative_degree[case] == 0 and loop.dead_time_s[case] == 0
-    if still and math.cos(reach.phase_infinite[case]) < -0.5:
-        listed.append(PhaseCrossover(math.inf, float(reach.log_high_gain[case]) * DB))
+    listed = [PhaseCrossover(omega, gain * DB) for omega, gain in points]
+    if fact.integrators == 0 and fact.turn != 0:
+        listed.insert(0, PhaseCrossover(0.0, fact.log_gain * DB))
+    if fact.relative_degree == 0 and fact.dead_time_s == 0 and math.cos(fact.phase_infinite) < -0.5:
+        listed.append(PhaseCrossover(math.inf, fact.log_high_gain * DB))
     return tuple(listed)
 
 
-def _limit_db(samples: Sampled, case: int) -> float | None:
-    if samples.loop.dead_time_s[case] > 0 and samples.reach.relative_degree[case] == 0:
-        return float(samples.reach.log_high_gain[case]) * DB
-    return None
+def _limit_db(fact: _Facts) -> float | None:
+    return fact.log_high_gain * DB if fact.dead_time_s > 0 and fact.relative_degree == 0 else None
 
 
-def _high_gain(samples: Sampled, case: int) -> float:
-    degree = float(samples.reach.relative_degree[case])
-    if degree > 0:
+def _high_gain(fact: _Facts) -> float:
+    if fact.relative_degree > 0:
         return 0.0
-    return math.inf if degree < 0 else _exp(float(samples.reach.log_high_gain[case]))
+    return math.inf if fact.relative_degree < 0 else _exp(fact.log_high_gain)
 
 
-def _peak_readings(peaks: Peaks, case: int) -> dict[str, Reading]:
-    logs, places = peaks.log_value[:, case].tolist(), peaks.at_rad_s[:, case].tolist()
-
+def _peak_readings(logs: list[float], places: list[float], band: float) -> dict[str, Reading]:
     def reading(row: int, spelled: Callable[[float], float]) -> Reading:
         level, at = logs[row], places[row]
         if math.isinf(level) and level > 0:
@@ -187,7 +216,6 @@ def _peak_readings(peaks: Peaks, case: int) -> dict[str, Reading]:
             return value(spelled(level), why="approached for ω → ∞")
         return value(spelled(level), at_rad_s=at)
 
-    band = float(peaks.bandwidth_rad_s[case])
     return {
         "peak_sensitivity": reading(0, _exp),
         "peak_complementary_sensitivity": reading(1, _exp),

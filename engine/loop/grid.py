@@ -140,15 +140,15 @@ def _merged(part: _PlantPart, compensator: Sections, fresh: FloatArray) -> tuple
         omega = both[order]
         first = np.concatenate([[True], omega[1:] > omega[:-1]])
         omega, order = omega[first], order[first]
-        gain = np.concatenate([gain, new_gain], axis=1)[:, order]
-        phase = np.concatenate([phase, new_phase], axis=1)[:, order]
+        gain = np.concatenate([gain, new_gain], axis=1).take(order, axis=1)
+        phase = np.concatenate([phase, new_phase], axis=1).take(order, axis=1)
     spread = compensator.spread()
     row = omega[None, :]
     own_gain, own_phase = gain_and_phase(spread, row)
     # A piece of an interval keeps the bounds of the whole: looser, but free.
     parent = np.searchsorted(own.omega_rad_s, omega[:-1], side="right")
     steep = steepest(spread, row)
-    jump = own.jump[:, parent]
+    jump = own.jump.take(parent, axis=1)
     if part.undamped:
         jump = jump | undamped_jumps(spread, row)
     phase = phase + own_phase
@@ -160,8 +160,8 @@ def _merged(part: _PlantPart, compensator: Sections, fresh: FloatArray) -> tuple
             omega,
             gain + own_gain,
             phase,
-            own.gain_steepness[:, parent] + steep,
-            own.phase_steepness[:, parent] + steep,
+            own.gain_steepness.take(parent, axis=1) + steep,
+            own.phase_steepness.take(parent, axis=1) + steep,
             jump,
         ),
         own_gain,

@@ -13,7 +13,7 @@ from typing import Literal, TypeAlias
 
 import numpy as np
 
-from engine.loop.gain_phase import gain_and_phase
+from engine.loop.gain_phase import gain_and_phase, slope
 from engine.loop.grid import Sampled
 from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.loop.slope_bounds import gain_slope_bounds, phase_slope_bounds
@@ -81,36 +81,67 @@ def turns(phase: FloatArray) -> FloatArray:
     return (phase + math.pi) / TURN
 
 
-def isolated(samples: Sampled, wanted: BoolArray, kind: Kind) -> tuple[Brackets, BoolArray]:
-    """Brackets around every crossing in the wanted (c, n−1) intervals; (c,) whether the curve rests on the level."""
+def isolated(
+    samples: Sampled, gain_wanted: BoolArray, phase_wanted: BoolArray
+) -> tuple[tuple[Brackets, BoolArray], tuple[Brackets, BoolArray]]:
+    """For gain and phase: brackets around every crossing in the wanted (c, n−1) intervals; (c,) curve rests there."""
     loop, nodes = samples.loop, samples.nodes
     omega = nodes.omega_rad_s
     step = np.log(omega[1:] / omega[:-1])
-    if kind == "gain":
-        y, steep = nodes.gain, nodes.gain_steepness
-        off = np.abs(y)
-        near = off[:, :-1] + off[:, 1:] <= steep * step
-        open_ = wanted & (near | ((y[:, :-1] < 0) != (y[:, 1:] < 0)))
-    else:
-        y, steep = turns(nodes.phase), nodes.phase_steepness / TURN
-        cell = np.floor(y)
-        off = y - cell
-        total = off[:, :-1] + off[:, 1:]
-        near = np.minimum(total, 2.0 - total) <= steep * step
-        open_ = wanted & (near | (cell[:, :-1] != cell[:, 1:])) & ~nodes.jump
-    flat = np.zeros(y.shape[0], bool)
-    case, column = np.nonzero(open_)
-    if not len(case):
-        return no_brackets(), flat
-    ends = np.stack([omega[column], omega[column + 1]], axis=1)
-    low, high = _bounds(loop.at(case).spread(), ends, kind)
-    low, high = low[:, 0], high[:, 0]
-    if kind == "gain" and nodes.jump.any():
-        # The passage of an undamped pair is no place for a hidden pair of crossings: let the ends decide.
-        jump = nodes.jump[case, column]
+    y_gain, y_phase = nodes.gain, turns(nodes.phase)
+    off = np.abs(y_gain)
+    near = off[:, :-1] + off[:, 1:] <= nodes.gain_steepness * step
+    below = y_gain < 0
+    gain_at = np.nonzero(gain_wanted & (near | (below[:, :-1] != below[:, 1:])))
+    cell = np.floor(y_phase)
+    off = y_phase - cell
+    total = off[:, :-1] + off[:, 1:]
+    near = np.minimum(total, 2.0 - total) * TURN <= nodes.phase_steepness * step
+    phase_at = np.nonzero(phase_wanted & (near | (cell[:, :-1] != cell[:, 1:])) & ~nodes.jump)
+
+    split = len(gain_at[0])
+    case, column = np.concatenate([gain_at[0], phase_at[0]]), np.concatenate([gain_at[1], phase_at[1]])
+    left, right = omega.take(column), omega.take(column + 1)
+    low, high = _slopes_between(loop.at(case), left, right, split)
+    # The passage of an undamped pair is no place for a hidden pair of crossings: let the ends decide.
+    jump = nodes.jump[case, column]
+    if jump.any():
         low, high = np.where(jump, 0.0, low), np.where(jump, 0.0, high)
-    todo = _Intervals(case, ends[:, 0], ends[:, 1], y[case, column], y[case, column + 1], low, high)
-    return _settled(loop, todo, noise_of(loop, kind), kind, flat)
+    results = []
+    parts: tuple[tuple[Kind, FloatArray, slice], ...] = (
+        ("gain", y_gain, slice(0, split)),
+        ("phase", y_phase, slice(split, None)),
+    )
+    for kind, y, part in parts:
+        where, at = case[part], column[part]
+        todo = _Intervals(where, left[part], right[part], y[where, at], y[where, at + 1], low[part], high[part])
+        results.append(_settled(loop, todo, kind))
+    return results[0], results[1]
+
+
+def _slopes_between(own: Sections, left: FloatArray, right: FloatArray, split: int) -> tuple[FloatArray, FloatArray]:
+    """Quick bounds of the slope over intervals, of the gain in the first `split` and of the phase [turns] in the rest.
+
+    The slope in the middle, give or take the bend: each root r bends ln L by t − t², t = s/(s − r), and t is at most
+    ω over the distance of jω from r.
+    """
+    middle = np.sqrt(left) * np.sqrt(right)
+    rate = slope(own, middle)
+    beyond = np.maximum(np.maximum(left - own.root.imag, own.root.imag - right), 0.0)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        size = np.abs(own.root_weight) * right / np.sqrt(beyond * beyond + own.root.real * own.root.real)
+        bend = np.add.reduce(size + size * size, axis=0) + own.dead_time_s * right
+        reach = bend * (0.5000001 * np.log(right / left))
+    centre = np.concatenate([rate.real[:split], rate.imag[split:] / TURN])
+    reach[split:] /= TURN
+    return centre - reach, centre + reach
+
+
+def _tightened(loop: Sections, part: _Intervals, kind: Kind) -> _Intervals:
+    """The same intervals with the slope bounds summed factor by factor."""
+    nodes = np.concatenate([part.left[:, None], part.right[:, None]], axis=1)
+    low, high = _bounds(loop.at(part.case).spread(), nodes, kind)
+    return _Intervals(part.case, part.left, part.right, part.y_left, part.y_right, low[:, 0], high[:, 0])
 
 
 def _bounds(own: Sections, nodes: FloatArray, kind: Kind) -> tuple[FloatArray, FloatArray]:
@@ -120,12 +151,12 @@ def _bounds(own: Sections, nodes: FloatArray, kind: Kind) -> tuple[FloatArray, F
     return low / TURN, high / TURN
 
 
-def _settled(
-    loop: Sections, todo: _Intervals, noise: FloatArray, kind: Kind, flat: BoolArray
-) -> tuple[Brackets, BoolArray]:
-    """Split the intervals until each is settled."""
-    found = [no_brackets()]
-    for _ in range(_ROUNDS):
+def _settled(loop: Sections, todo: _Intervals, kind: Kind) -> tuple[Brackets, BoolArray]:
+    """Bound more tightly, then split the intervals until each is settled."""
+    noise = noise_of(loop, kind)
+    flat = np.zeros(len(noise), bool)
+    found: list[Brackets] = []
+    for round_ in range(_ROUNDS):
         step = np.log(todo.right / todo.left)
         monotone = (todo.low >= 0) | (todo.high <= 0)
         bottom, top = _cone(todo.y_left, todo.y_right, todo.low, todo.high, step)
@@ -133,19 +164,21 @@ def _settled(
         near = _holds_level(bottom - tiny, top + tiny, kind)
         if not near.all():
             todo, step, monotone, tiny = todo.where(near), step[near], monotone[near], tiny[near]
-        travel = np.maximum(np.abs(todo.low), np.abs(todo.high)) * step
-        still = _on_level(todo, tiny, kind) & (travel <= tiny)
-        if still.any():
+        rest = ~monotone & (step > 1e-15)
+        left_on, right_on = _off_level(todo.y_left, kind) <= tiny, _off_level(todo.y_right, kind) <= tiny
+        if (left_on | right_on).any():
+            travel = np.maximum(np.abs(todo.low), np.abs(todo.high)) * step
+            still = left_on & right_on & (travel <= tiny)
             resting = still & ((step > 1e-4) | (todo.low == todo.high))
             flat[todo.case[resting]] = True
-            found.append(_touching_nodes(todo.where(~resting), noise, kind))
-        else:
-            found.append(_touching_nodes(todo, noise, kind))
-        found.append(_brackets_of(todo.where(monotone), kind))
-        rest = ~monotone & ~still & (step > 1e-15)
+            found.append(_touching(todo, left_on & ~resting, right_on & ~resting))
+            rest &= ~still
+        found.append(_brackets_of(todo if monotone.all() else todo.where(monotone), kind))
         if not rest.any():
             break
-        todo = _without_flat(_split(loop, todo.where(rest), kind), noise, kind, flat)
+        todo = todo.where(rest)
+        todo = _tightened(loop, todo, kind) if round_ == 0 else _split(loop, todo, kind)
+        todo = todo if round_ == 0 else _without_flat(todo, noise, kind, flat)
     result = Brackets.joined(found)
     # Where the curve rests on the level, its single nodes are no touching points.
     if not flat.any():
@@ -220,13 +253,8 @@ def _brackets_of(part: _Intervals, kind: Kind) -> Brackets:
     return Brackets(part.case[index], left, right, level, start, y_right > y_left)
 
 
-def _touching_nodes(part: _Intervals, noise: FloatArray, kind: Kind) -> Brackets:
+def _touching(part: _Intervals, left: BoolArray, right: BoolArray) -> Brackets:
     """Ends that lie on a level within rounding; those beside a true crossing are dropped later."""
-    tiny = noise[part.case]
-    left = _off_level(part.y_left, kind) <= tiny
-    right = _off_level(part.y_right, kind) <= tiny
-    if not (left.any() or right.any()):
-        return no_brackets()
     at = np.concatenate([part.left[left], part.right[right]])
     y = np.concatenate([part.y_left[left], part.y_right[right]])
     case = np.concatenate([part.case[left], part.case[right]])

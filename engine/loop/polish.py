@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass, fields
 
 import numpy as np
 
 from engine.loop.closed_loop_gain import Points, level_slope_bend
 from engine.loop.grid import Sampled
-from engine.loop.sections import IntArray
+from engine.loop.sections import BoolArray, IntArray
 from engine.model.factored import FloatArray
 
 
@@ -38,46 +37,67 @@ def joined_tasks(*parts: Tasks) -> Tasks:
 def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
     """Frequencies and values (ln, or rad for a phase): Newton's method kept inside the brackets by the slope's sign.
 
-    An extreme is never reported worse than any value that was met on the way.
+    An extreme is never reported worse than where it was started.
     """
-    omega = tasks.start.copy()
+    omega = tasks.start
     if not len(omega):
         return omega, omega
     points = Points.of(samples, tasks.quantity, tasks.case)
-    left, right = tasks.left.copy(), tasks.right.copy()
+    left, right = tasks.left, tasks.right
     to_level = ~np.isnan(tasks.level)
-    best_omega, best = omega.copy(), np.full(len(omega), -math.inf)
-    tilted = bool(tasks.tilt.any())
-    for _ in range(60):
-        level, slope, bend = level_slope_bend(points, omega)
-        height = tasks.sign * (level - tasks.tilt * np.log(omega) if tilted else level)
-        slope, bend = tasks.sign * (slope - tasks.tilt), tasks.sign * bend
-        miss = tasks.sign * (level - tasks.level)
-        better = (height > best) | to_level
-        best, best_omega = np.where(better, height, best), np.where(better, omega, best_omega)
-        # Seen as falling, a level lies further right as long as the value is above it.
-        onward = np.where(to_level, miss > 0, slope > 0)
-        left, right = np.where(onward, omega, left), np.where(onward, right, omega)
-        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-            move = np.where(to_level, -miss / slope, np.where(bend < 0, -slope / bend, math.nan))
+    goal = np.where(to_level, tasks.level, 0.0)
+    closed = np.where(to_level, 1e-15, 1e-10)
+    started = tasks.level
+    with np.errstate(all="ignore"):
+        for round_ in range(80):
+            here = omega
+            level, slope, bend = level_slope_bend(points, omega)
+            if round_ == 0:
+                started = level
+            # A level seen as falling, and the slope at a greatest value, both fall through zero at the place sought.
+            tilted = slope - tasks.tilt
+            sought = tasks.sign * np.where(to_level, level - goal, tilted)
+            rate = tasks.sign * np.where(to_level, slope, bend)
+            falling = rate < 0
+            onward = sought > 0
+            left, right = np.where(onward, omega, left), np.where(onward, right, omega)
+            move = -sought / rate
             after = omega * np.exp(move)
-            outside = ~((after > left) & (after < right))
-        # An extreme is settled when the step no longer changes the value; the step itself still squares the error.
-        with np.errstate(invalid="ignore"):
-            still = np.where(to_level, np.abs(move) < 1e-10, np.abs(slope * move) < 1e-12)
-        middle = np.where(still, omega, np.sqrt(left) * np.sqrt(right))
-        # A step past an end that was never tried goes to that end: if the slope still points out of the bracket
-        # there, the extreme is a neighbour's and halving towards the end would only confirm it slowly.
-        past = outside & ~still & ~to_level & np.isfinite(move)
-        middle = np.where(past & onward & (right == tasks.right), right, middle)
-        middle = np.where(past & ~onward & (left == tasks.left), left, middle)
-        after = np.where(outside, np.clip(middle, left, right), after)
-        at_end = (onward & (omega == tasks.right)) | (~onward & (omega == tasks.left))
-        done = still | (right - left <= np.where(to_level, 1e-14, 1e-10) * omega) | (at_end & ~to_level)
-        omega = after
-        if done.all():
-            break
-    # The last step of an extreme changes its value by less than rounding.
-    return np.where(better, omega, best_omega), np.where(
-        to_level, tasks.level, tasks.sign * best + (tasks.tilt * np.log(omega) if tilted else 0.0)
-    )
+            # What Newton's step leaves of a level is the bend's share of its square: below rounding. A step of 1e-4 of
+            # an extreme's width leaves 1e-8 of the width.
+            left_over = np.where(to_level, 1e-15 * np.abs(rate) - np.abs(bend) * (move * move), 1e-8 - sought * move)
+            still = ((left_over > 0) & falling) | (sought == 0)
+            good = (after > left) & (after < right) & falling
+            if good.all():
+                omega, done = after, still
+            else:
+                omega, at_end = _inside(tasks, omega, after, left, right, good, still, onward, falling)
+                done = still | (at_end & ~to_level) | (right - left <= closed * omega)
+            if done.all():
+                break
+        # The last step's own rise, to the third power of that step.
+        level = level + np.where(omega == here, 0.0, 0.5 * (slope + tasks.tilt) * np.log(omega / here))
+        kept = to_level | (tasks.sign * (level - started - tasks.tilt * np.log(omega / tasks.start)) >= 0)
+    return np.where(kept, omega, tasks.start), np.where(to_level, tasks.level, np.where(kept, level, started))
+
+
+def _inside(
+    tasks: Tasks,
+    omega: FloatArray,
+    after: FloatArray,
+    left: FloatArray,
+    right: FloatArray,
+    good: BoolArray,
+    still: BoolArray,
+    onward: BoolArray,
+    falling: BoolArray,
+) -> tuple[FloatArray, BoolArray]:
+    """The next frequencies where a step left its bracket, and where the end of a bracket has been tried in vain."""
+    middle = np.where(still, omega, np.sqrt(left) * np.sqrt(right))
+    # A step past an end that was never tried goes to that end: if the slope still points out of the bracket
+    # there, the extreme is a neighbour's and halving towards the end would only confirm it slowly.
+    past = falling & ~still & np.isnan(tasks.level)
+    middle = np.where(past & onward & (right == tasks.right), right, middle)
+    middle = np.where(past & ~onward & (left == tasks.left), left, middle)
+    at_end = (onward & (omega == tasks.right)) | (~onward & (omega == tasks.left))
+    return np.where(good, after, np.minimum(np.maximum(middle, left), right)), at_end

@@ -2,7 +2,8 @@
 
 Beyond the largest root, ln L(s) = ln g − r·ln s − Σ A_k / (k·s^k) with the power sums A_k = Σ ±root^k; even k
 move the gain, odd k the phase. The first sum that is not zero rules once ω is far enough out, and how far that
-is follows from the geometric remainder. The same holds below the smallest root with the inverse roots.
+is follows from the geometric remainder. The same holds below the smallest root with the inverse roots, so both ends
+are computed together: arrays (2, c), row 0 for ω → 0 and row 1 for ω → ∞.
 """
 
 from __future__ import annotations
@@ -18,6 +19,7 @@ from engine.model.factored import ComplexArray, FloatArray
 # A power sum smaller than this, relative to the number of roots, is taken for zero: it is rounding.
 _NOTHING = 1e-12
 _HIGHEST_SUM = 8
+_QUARTER = 0.5 * math.pi
 
 
 @dataclass(frozen=True, eq=False)
@@ -50,88 +52,80 @@ class Reach:
 
 def reach_of(model: Sections) -> Reach:
     """Structural limits of a set of loops, last axis (c,)."""
-    active = model.root_weight != 0
+    weight = model.root_weight
     size = np.abs(model.root)
-    count = np.sum(active, axis=0)
-    largest = np.max(np.where(active, size, 0.0), axis=0, initial=0.0)
-    smallest = np.min(np.where(active, size, math.inf), axis=0, initial=math.inf)
+    present = np.abs(weight)
+    count = np.add.reduce(present, axis=0)
+    smallest = np.minimum.reduce(np.where(present > 0, size, math.inf), axis=0, initial=math.inf)
+    largest = np.maximum.reduce(present * size, axis=0, initial=0.0)
     bare = count == 0
-    largest, smallest = np.where(bare, 1.0, largest), np.where(bare, 1.0, smallest)
-    lag = model.dead_time_s * smallest
-    high_sums = _PowerSums(model.root / largest, model.root_weight, 0.0)
-    low_sums = _PowerSums(smallest / model.root, model.root_weight, lag)
-    relative_degree = model.integrators - np.sum(model.root_weight, axis=0)
-    log_high_gain = model.log_gain - np.sum(model.root_weight * np.log(size), axis=0)
-    phase_zero = model.turn - model.integrators * (0.5 * math.pi)
-    phase_infinite = phase_zero + 0.5 * math.pi * (
-        np.sum(model.corner_weight * np.sign(model.corner), axis=0)
-        + 2.0 * np.sum(model.pair_weight * np.where(model.decay < 0, -1.0, 1.0), axis=0)
-    )
-    delayed = model.dead_time_s > 0
+    if bare.any():
+        smallest, largest = np.where(bare, 1.0, smallest), np.where(bare, 1.0, largest)
+    degree = np.array([-model.integrators, model.integrators - np.add.reduce(weight, axis=0)])
+    log_limit = np.array([model.log_gain, model.log_gain - np.add.reduce(weight * np.log(size), axis=0)])
+    phase = np.array([model.turn - model.integrators * _QUARTER] * 2)
+    # A real root turns the phase by a quarter between the ends, each root of a pair as well.
+    phase[1] -= _QUARTER * np.add.reduce(weight * np.where(model.root.real > 0, 1.0, -1.0), axis=0)
+    delay = model.dead_time_s
+    delayed = delay > 0
 
-    plain_high = _plain(count, 0.0 * lag)
-    plain_low = _plain(count, lag)
-    phase_high = largest / _first_rules(high_sums, 1, count, _on_level(phase_infinite), plain_high)
-    gain_high = _gain_limit(log_high_gain, relative_degree, high_sums, count, delayed, plain_high)
-    gain_low = _gain_limit(model.log_gain, -model.integrators, low_sums, count, False & delayed, plain_low)
-    far = np.where(relative_degree != 0, np.exp(_bounded(log_high_gain / _nonzero(relative_degree))) * 2.0, 0.0)
-    near = np.where(
-        model.integrators != 0, np.exp(_bounded(model.log_gain / _nonzero(model.integrators))) / 2.0, math.inf
-    )
-    gain_high_at = np.maximum(largest / gain_high, far)
-    return Reach(
-        gain_low=np.minimum(smallest * gain_low, near),
-        gain_high=gain_high_at,
-        phase_low=smallest * _first_rules(low_sums, 1, count + lag, _on_level(phase_zero), plain_low),
+    # Distances q < 1 from the ends, as shares of the smallest root's frequency or the inverse of the largest's.
+    lag = np.array([delay * smallest, 0.0 * delay])
+    sums = _PowerSums(np.array([smallest / model.root, model.root / largest]), weight, lag)
+    plain = np.minimum(0.5 / np.sqrt(np.maximum(count, 1.0)), 1.2 / (np.maximum(count, 1.0) + lag))
+    full = np.maximum(count + lag, 1.0)
+    in_phase = _first_rules(sums, 1, full, _on_level(phase), plain)
+    in_gain = _gain_limit(log_limit, degree, sums, full, np.array([np.zeros_like(delayed), delayed]), plain)
+    # Beyond the corners the gain follows a straight line, and crosses 1 where that does.
+    straight = np.exp(_bounded(log_limit / np.where(degree == 0, 1.0, np.abs(degree))))
+    near = np.where(degree[0] < 0, straight[0], np.where(degree[0] > 0, 1.0 / straight[0], math.inf)) / 2.0
+    far = np.where(degree[1] > 0, straight[1], np.where(degree[1] < 0, 1.0 / straight[1], 0.0)) * 2.0
+    gain_high = np.maximum(largest / in_gain[1], far)
+    phase_high = largest / in_phase[1]
+    if delayed.any():
         # There the rational part turns by less than a quarter any more: two turns of the dead time cross the level.
-        phase_high=np.where(
-            delayed, gain_high_at + 4.0 * math.pi / np.where(delayed, model.dead_time_s, 1.0), phase_high
-        ),
-        closed_low=smallest * np.where(model.integrators == 0, _gap(model.log_gain, phase_zero), 1.0),
-        closed_high=np.maximum(
-            largest / np.where(relative_degree == 0, _gap(log_high_gain, phase_infinite), 1.0),
-            _last_bandwidth(model, relative_degree, log_high_gain),
-        ),
+        phase_high = np.where(delayed, gain_high + 4.0 * math.pi / np.where(delayed, delay, 1.0), phase_high)
+    gap = np.where(degree == 0, _gap(log_limit, phase), 1.0)
+    return Reach(
+        gain_low=np.minimum(smallest * in_gain[0], near),
+        gain_high=gain_high,
+        phase_low=smallest * in_phase[0],
+        phase_high=phase_high,
         smallest=smallest,
         largest=largest,
-        relative_degree=relative_degree,
-        log_high_gain=log_high_gain,
-        phase_zero=phase_zero,
-        phase_infinite=phase_infinite,
+        closed_low=smallest * gap[0],
+        closed_high=np.maximum(largest / gap[1], _last_bandwidth(model, degree[1], log_limit[1])),
+        relative_degree=degree[1],
+        log_high_gain=log_limit[1],
+        phase_zero=phase[0],
+        phase_infinite=phase[1],
     )
 
 
 class _PowerSums:
-    """Σ weight·ratio^k, computed as far as they are asked for."""
+    """Σ weight·ratio^k over the roots (2, n, c), computed as far as they are asked for; the lag joins the first."""
 
-    def __init__(self, ratio: ComplexArray, weight: FloatArray, first_extra: float | FloatArray) -> None:
-        self._ratio, self._weight, self._extra = ratio, weight, first_extra
+    def __init__(self, ratio: ComplexArray, weight: FloatArray, lag: FloatArray) -> None:
+        self._ratio, self._weight, self._lag = ratio, weight, lag
         self._power = np.ones_like(ratio)
         self._sums: list[FloatArray] = []
 
     def sum(self, k: int) -> FloatArray:
-        """The sum for k = 1, 2, …"""
+        """(2, c) the sum for k = 1, 2, …"""
         while len(self._sums) < k:
             self._power = self._power * self._ratio
-            total: FloatArray = np.add.reduce(self._weight * self._power.real, axis=0)
-            self._sums.append(total if self._sums else total + self._extra)
+            total: FloatArray = np.add.reduce(self._weight * self._power.real, axis=1)
+            self._sums.append(total if self._sums else total + self._lag)
         return self._sums[k - 1]
 
 
-def _plain(count: FloatArray, lag: FloatArray) -> FloatArray:
-    """Distance q < 1 at which all roots together move the gain by under 1/4 and the phase by under 90°."""
-    full = np.maximum(count, 1.0) + lag
-    return np.minimum(0.5 / np.sqrt(np.maximum(count, 1.0)), 1.2 / full)
-
-
-def _first_rules(sums: _PowerSums, first: int, count: FloatArray, needed: BoolArray, plain: FloatArray) -> FloatArray:
+def _first_rules(sums: _PowerSums, first: int, full: FloatArray, needed: BoolArray, plain: FloatArray) -> FloatArray:
     """Distance q within which the first sum that is not zero outweighs all later ones, where `needed`.
 
     first: 1 for the odd sums (phase), 2 for the even ones (gain).
     """
     q = plain
     found = ~needed
-    full = np.maximum(count, 1.0)
     for k in range(first, _HIGHEST_SUM + 1, 2):
         if found.all():
             break
@@ -146,43 +140,43 @@ def _gain_limit(
     log_limit: FloatArray,
     degree: FloatArray,
     sums: _PowerSums,
-    count: FloatArray,
+    full: FloatArray,
     monotone: BoolArray,
     plain: FloatArray,
 ) -> FloatArray:
     """Distance q beyond which the gain crosses 1 no more, apart from the asymptote's own crossing."""
-    level = (degree == 0) & (np.abs(log_limit) <= 1e-13)
-    ruled = _first_rules(sums, 2, count, (level | monotone) & (degree == 0), plain)
-    clear = np.sqrt(np.abs(log_limit) / np.maximum(count, 1.0))
-    return np.where((degree == 0) & ~level, np.minimum(ruled, np.maximum(clear, 1e-7)), ruled)
+    finite = degree == 0
+    if not finite.any():
+        return plain
+    level = finite & (np.abs(log_limit) <= 1e-13)
+    ruled = _first_rules(sums, 2, full, (level | monotone) & finite, plain)
+    clear = np.maximum(np.sqrt(np.abs(log_limit) / full), 1e-7)
+    return np.where(finite & ~level, np.minimum(ruled, clear), ruled)
 
 
 def _gap(log_gain: FloatArray, phase: FloatArray) -> FloatArray:
     """|1 + L| at an end where L is real, in 1e-9 … 1."""
-    size = np.exp(np.clip(log_gain, -1.0, 1.0))
-    return np.clip(np.where(np.cos(phase) < 0, np.abs(1.0 - size), 1.0), 1e-9, 1.0)
+    size = np.exp(np.minimum(np.maximum(log_gain, -1.0), 1.0))
+    return np.where(np.cos(phase) < 0, np.minimum(np.maximum(np.abs(1.0 - size), 1e-9), 1.0), 1.0)
 
 
 def _last_bandwidth(model: Sections, relative_degree: FloatArray, log_high_gain: FloatArray) -> FloatArray:
     """Where |L|, and |T| with it, has fallen to half of |T(0)|, on the asymptote; 0 where |T(0)| is not below 1."""
-    size = np.exp(np.clip(model.log_gain, -300.0, 300.0))
+    falling = (model.integrators == 0) & (relative_degree > 0)
+    if not falling.any():
+        return np.zeros(len(falling))
+    size = np.exp(_bounded(model.log_gain))
     value = np.where(model.turn < -1.0, -size, size)
     with np.errstate(divide="ignore"):
         level = np.minimum(model.log_gain - np.log(np.abs(1.0 + value)), 0.0) - 0.7
-    falling = (model.integrators == 0) & (relative_degree > 0)
-    far = np.exp(_bounded((log_high_gain - level) / _nonzero(relative_degree)))
+    far = np.exp(_bounded((log_high_gain - level) / np.maximum(relative_degree, 1.0)))
     return np.where(falling & np.isfinite(far), far, 0.0)
 
 
 def _on_level(phase: FloatArray) -> BoolArray:
-    quarter = np.rint(phase / (0.5 * math.pi))
-    level: BoolArray = np.mod(quarter, 4) == 2
+    level: BoolArray = np.mod(np.rint(phase / _QUARTER), 4.0) == 2.0
     return level
 
 
 def _bounded(exponent: FloatArray) -> FloatArray:
-    return np.clip(exponent, -300.0, 300.0)
-
-
-def _nonzero(degree: FloatArray) -> FloatArray:
-    return np.where(degree == 0, 1.0, degree)
+    return np.minimum(np.maximum(exponent, -300.0), 300.0)

@@ -66,7 +66,7 @@ class Sections:
 
     def at(self, case: IntArray) -> Sections:
         """The factors of one case per point: last axis (p,) instead of (c,)."""
-        return Sections(self.block[:, case], self.root[:, case], self.corners, self.pairs)
+        return Sections(self.block.take(case, axis=1), self.root.take(case, axis=1), self.corners, self.pairs)
 
     def spread(self) -> Sections:
         """The same with a last axis of length 1, to be broadcast over frequencies."""

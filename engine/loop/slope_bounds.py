@@ -75,9 +75,11 @@ def steepest(model: Sections, nodes: FloatArray) -> FloatArray:
     """
     left, right = nodes[..., :-1], nodes[..., 1:]
     beyond = np.maximum(left - model.root.imag, model.root.imag - right)
-    distance = np.hypot(model.root.real, np.maximum(beyond, 0.0, out=beyond))
+    np.maximum(beyond, 0.0, out=beyond)
+    beyond *= beyond
+    beyond += model.root.real * model.root.real
     with np.errstate(divide="ignore"):
-        share = np.abs(model.root_weight) / distance
+        share = np.abs(model.root_weight) / np.sqrt(beyond, out=beyond)
     total: FloatArray = np.abs(model.integrators) + (np.add.reduce(share, axis=0) + model.dead_time_s) * right
     return total
 

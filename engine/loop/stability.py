@@ -40,18 +40,15 @@ class Stability:
 
 def decide_stability(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> tuple[Stability, ...]:
     """The verdict per case."""
-    counted = encirclement_count(samples, found)
+    counted = encirclement_count(samples, found).tolist()
+    rooted = np.add.reduce(roots.roots.real > 0, axis=1).tolist()
     boundary = _boundary_reasons(samples, found)
     hidden = _hidden_modes(samples)
-    rooted = np.sum(roots.roots.real > 0, axis=1)
     return tuple(
-        _verdict(
-            int(counted[case]),
-            int(rooted[case]) if roots.complete[case] else None,
-            boundary[case],
-            hidden[case],
+        _verdict(count, number if complete else None, reason, mode)
+        for count, number, complete, reason, mode in zip(
+            counted, rooted, roots.complete.tolist(), boundary, hidden, strict=True
         )
-        for case in range(len(counted))
     )
 
 
