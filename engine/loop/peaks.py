@@ -127,16 +127,15 @@ def _greatest_per_row(rows: FloatArray, quantity: IntArray, case: IntArray, colu
 def _narrow_candidates(samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots, highest: FloatArray) -> Tasks:
     """The narrow places at which some gain comes near its greatest sample or exceeds it."""
     case, at, left, right = narrow_places(samples, brackets, roots)
+    if not len(case):
+        return _extremes(case, case, at, at, at)
     count = len(PEAKS)
     quantity = np.repeat(np.array(PEAKS, dtype=np.int64), len(at))
     case = np.tile(case, count)
     at, left, right = np.tile(at, count), np.tile(left, count), np.tile(right, count)
-    if len(at):
-        level = log_level(Points.of(samples, quantity, case), at)
-        worth = level > highest[quantity, case] + _WORTH_POLISHING
-        quantity, case = quantity[worth], case[worth]
-        at, left, right = at[worth], left[worth], right[worth]
-    return _extremes(quantity, case, left, at, right)
+    level = log_level(Points.of(samples, quantity, case), at)
+    worth = level > highest[quantity, case] + _WORTH_POLISHING
+    return _extremes(quantity[worth], case[worth], left[worth], at[worth], right[worth])
 
 
 def _bandwidth_tasks(samples: Sampled, levels: FloatArray, limits: Limits) -> Tasks:

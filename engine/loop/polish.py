@@ -62,11 +62,14 @@ def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:
             onward = sought > 0
             left, right = np.where(onward, omega, left), np.where(onward, right, omega)
             move = -sought / rate
+            # The bend is known: use it where a level is met (Chebyshev's third-order step).
+            curl = np.where(to_level, tasks.sign * bend / rate, 0.0)
+            move = move - 0.5 * curl * move * move
             after = omega * np.exp(move)
-            # What Newton's step leaves of a level is the bend's share of its square: below rounding. A step of 1e-4 of
-            # an extreme's width leaves 1e-8 of the width.
-            left_over = np.where(to_level, 1e-15 * np.abs(rate) - np.abs(bend) * (move * move), 1e-8 - sought * move)
-            still = ((left_over > 0) & falling) | (sought == 0)
+            # What is left of a level after that step is its cube over the square of the curve's own width. A step of
+            # 4e-4 of an extreme's width leaves 1e-7 of the width and 1e-11 of the value, once its rise is added.
+            cube = (1.0 + rate * rate + curl * curl) * np.abs(move * move * move)
+            still = (np.where(to_level, cube * 1e8, sought * move) < 1.5e-7) & falling | (sought == 0)
             good = (after > left) & (after < right) & falling
             if good.all():
                 omega, done = after, still

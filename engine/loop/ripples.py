@@ -20,7 +20,6 @@ from engine.model.factored import FloatArray
 
 _COARSE = 0.7
 """Turn of e^{−jωθ} from node to node [rad] from which on the samples no longer show the ripples."""
-_ROUNDS = 14
 _NEIGHBOURS = np.arange(-2, 3)
 
 
@@ -37,55 +36,64 @@ def ripple_tasks(
     best: (q, c) greatest sampled sign·(quantity − tilt·ln ω) of each quantity and case.
     """
     omega = samples.nodes.omega_rad_s
-    delay = samples.loop.dead_time_s
-    inside = np.nonzero((omega >= band[0]) & (omega <= band[1]))[0]
-    rows, cases, columns = [], [], []
-    for item in np.nonzero(delay > 0)[0].tolist() if len(inside) > 2 else []:
-        coarse = inside[1:][float(delay[item]) * np.diff(omega[inside]) > _COARSE]
-        if not len(coarse):
-            continue
-        gain = samples.nodes.gain[item, coarse]
-        for row, quantity in enumerate(quantities):
-            height = sign * (_envelope(samples, quantity, gain, coarse, sign) - tilt * np.log(omega[coarse]))
-            around = np.pad(height, 1, constant_values=-math.inf)
-            top = (height >= around[:-2]) & (height >= around[2:]) & (height > best[row, item])
-            found = coarse[top]
-            rows += [row] * len(found)
-            cases += [item] * len(found)
-            columns += found.tolist()
-    kinds = np.array([int(quantities[row]) for row in rows], dtype=np.int64)
-    case, column = np.array(cases, dtype=np.int64), np.array(columns, dtype=np.int64)
-    if not len(case):
-        nothing = np.empty(0)
-        return Tasks(kinds, case, nothing, nothing, nothing, nothing, nothing, nothing)
-    left = np.maximum(omega[np.maximum(column - 1, 0)], band[0])
+    delayed = np.nonzero(samples.loop.dead_time_s > 0)[0]
+    delay = samples.loop.dead_time_s[delayed][:, None]
+    inside = (omega[1:] >= band[0]) & (omega[1:] <= band[1])
+    coarse = (delay * np.diff(omega) > _COARSE) & inside
+    first = int(np.argmax(coarse.any(axis=0))) if coarse.any() else len(omega)
+    columns = np.arange(first + 1, len(omega))
+    if not len(columns):
+        return _nothing()
+    height = sign * (_envelopes(samples, quantities, delayed, columns, sign) - tilt * np.log(omega[columns]))
+    beats = coarse[:, first:] & (height > best[:, delayed][:, :, None])
+    if not beats.any():
+        return _nothing()
+    around = np.pad(np.where(beats, height, -math.inf), ((0, 0), (0, 0), (1, 1)), constant_values=-math.inf)
+    row, which, column = np.nonzero(beats & (height >= around[:, :, :-2]) & (height >= around[:, :, 2:]))
+    kinds = np.array([int(quantity) for quantity in quantities], dtype=np.int64)[row]
+    case, column = delayed[which], columns[column]
+    left = np.maximum(omega[column - 1], band[0])
     right = np.minimum(omega[np.minimum(column + 1, len(omega) - 1)], band[1])
     own = samples.loop.at(case)
     centre = _envelope_top(samples, own, kinds, left, right, sign, tilt)
     return _passages(own, kinds, case, centre, sign, tilt, band)
 
 
-def _envelope(samples: Sampled, quantity: Quantity, gain: FloatArray, columns: IntArray, sign: float) -> FloatArray:
-    """ln of the envelope of a quantity where |L| < 1; no extreme is to be found by it elsewhere."""
+def _nothing() -> Tasks:
+    none, nothing = np.empty(0, np.int64), np.empty(0)
+    return Tasks(none, none, nothing, nothing, nothing, nothing, nothing, nothing)
+
+
+def _envelopes(
+    samples: Sampled, quantities: tuple[Quantity, ...], cases: IntArray, columns: IntArray, sign: float
+) -> FloatArray:
+    """(q, d, k) ln of the envelopes where |L| < 1; no extreme is to be found by them elsewhere."""
+    gain = samples.nodes.gain[np.ix_(cases, columns)]
+    gain_C = samples.compensator_gain[0, columns]
     size = np.exp(np.minimum(gain, 0.0))
-    with np.errstate(divide="ignore"):
-        level: FloatArray = -np.log1p(-sign * np.minimum(size, 1.0 - 1e-12))
-    if quantity == Quantity.COMPLEMENTARY:
-        level = level + gain
-    elif quantity == Quantity.EFFORT:
-        level = level + samples.compensator_gain[0, columns]
-    elif quantity == Quantity.LOAD:
-        level = level + gain - samples.compensator_gain[0, columns]
-    elif quantity == Quantity.DISK:
-        level = level + np.log1p(sign * size)
-    return np.where(gain < 0, level, -sign * math.inf)
+    of_S = -np.log1p(-sign * np.minimum(size, 1.0 - 1e-12))
+    level = np.empty((len(quantities), *gain.shape))
+    for row, quantity in enumerate(quantities):
+        if quantity == Quantity.COMPLEMENTARY:
+            level[row] = of_S + gain
+        elif quantity == Quantity.EFFORT:
+            level[row] = of_S + gain_C
+        elif quantity == Quantity.LOAD:
+            level[row] = of_S + (gain - gain_C)
+        elif quantity == Quantity.DISK:
+            level[row] = of_S + np.log1p(sign * size)
+        else:
+            level[row] = of_S
+    level[:, gain >= 0] = -sign * math.inf
+    return level
 
 
 def _envelope_top(
     samples: Sampled, own: Sections, kinds: IntArray, left: FloatArray, right: FloatArray, sign: float, tilt: float
 ) -> FloatArray:
-    """Where each envelope is extreme, by bisection of its slope: as close as one ripple needs."""
-    for _ in range(_ROUNDS):
+    """Where each envelope is extreme, by bisection of its slope: to half a ripple."""
+    ripples = float(np.max(own.dead_time_s * (right - left))) / math.pi
+    for _ in range(max(math.ceil(math.log2(max(ripples, 1.0))), 1)):
         middle = np.sqrt(left) * np.sqrt(right)
         gain = gain_and_phase(own, middle)[0]
         rate = slope(own, middle).real
