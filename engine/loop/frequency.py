@@ -82,7 +82,13 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
     verdicts = decide_stability(samples, found, analysis.roots)
     facts = _facts(samples)
     gains, phases = _by_case(found.gain, loops.count), _by_case(found.phase, loops.count)
-    poles = pole_measures(analysis.roots)
+    poles = pole_measures(
+        analysis.roots,
+        [
+            gain[-1][0] if gain else phase[0][0] if phase else math.inf
+            for gain, phase in zip(gains, phases, strict=True)
+        ],
+    )
     suprema = list(
         zip(peaks.log_value.T.tolist(), peaks.at_rad_s.T.tolist(), peaks.bandwidth_rad_s.tolist(), strict=True)
     )

@@ -10,7 +10,7 @@ from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.crossings import Isolated
 from engine.loop.gain_phase import gain_and_phase, slope
 from engine.loop.grid import Sampled
-from engine.loop.sections import IntArray, Sections
+from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.model.factored import FloatArray
 
 _WIDEST = 0.03
@@ -36,8 +36,9 @@ def narrow_places(
     # Samples within 0.3 half-widths of the top see 96 % of it: the search on the grid has the peak then.
     hidden = omega[place] - omega[place - 1] > 0.6 * np.abs(found.real)
     case, at = case[hidden], found.imag[hidden]
-    if not roots.complete.all():
-        more_cases, more = _near_passages(samples, brackets, roots)
+    unlisted = np.array([found is None or not found.counted for found in roots.dominant]) & ~roots.complete
+    if unlisted.any():
+        more_cases, more = _near_passages(samples, brackets, unlisted)
         case, at = np.concatenate([case, more_cases]), np.concatenate([at, more])
     place = np.searchsorted(omega, at)
     left = np.maximum(omega[place - 1], at * (1.0 - _WIDEST))
@@ -45,12 +46,12 @@ def narrow_places(
     return case, at, left, right
 
 
-def _near_passages(samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots) -> tuple[IntArray, FloatArray]:
+def _near_passages(samples: Sampled, brackets: Isolated, unlisted: BoolArray) -> tuple[IntArray, FloatArray]:
     """Poles seen from the crossings near −1 of the loops whose poles are not listed."""
     omega = samples.nodes.omega_rad_s
     case = np.concatenate([brackets.gain.case, brackets.phase.case])
     start = np.concatenate([brackets.gain.start, brackets.phase.start])
-    chosen = ~roots.complete[case]
+    chosen = unlisted[case]
     case, start = case[chosen], start[chosen]
     own = samples.loop.at(case)
     gain, phase = gain_and_phase(own, start)
