@@ -18,8 +18,9 @@ from engine.design.parse import parse_design
 from tests.outside import exact_polynomial as polynomial
 from tests.outside import hinf_norm
 from tests.outside.agreement import PEAKS, disagreements, off, time_disagreements
+from tests.outside.closed_loop import unstable_poles_by_encirclement
 from tests.outside.delayed_responses import DelayedSeries
-from tests.outside.loop import Loop, loop_of_design
+from tests.outside.loop import Loop, Part, loop_of_design
 from tests.outside.make_reference import entry as recomputed
 from tests.outside.make_reference import stored
 from tests.outside.random_loops import COUNT
@@ -149,6 +150,31 @@ def _compare(curves: dict, signal: str, want: Modal) -> None:
     off_by = np.abs(got - y) / np.max(np.abs(y))
     worst = int(np.argmax(off_by))
     assert off_by[worst] <= RESPONSE_SHARE, f"{signal} at t = {t[worst]:g}: engine {got[worst]}, reference {y[worst]}"
+
+
+@each(DELAYED[::2])
+def test_slowest_and_least_damped_pole_with_dead_time(entry):
+    """No closed-loop pole lies right of the slowest one, counted by encirclements of the loop shifted along s."""
+    readings = assessed(entry["index"])["cases"][0]["readings"]
+    slowest, least = readings["slowest_pole_rad_s"], readings["least_damping"]
+    assert slowest["state"] == "value", slowest
+    loop = loop_of_design(entry["design"])
+    sigma = mpf(slowest["value"])
+    assert unstable_poles_by_encirclement(_shifted(loop, sigma * (1 - mpf("1e-6")))) == 0
+    assert unstable_poles_by_encirclement(_shifted(loop, sigma * (1 + mpf("1e-6")))) > 0
+    if least["state"] == "value":
+        zeta, size = mpf(least["value"]), mpf(least["at_rad_s"])
+        pole = size * mpc(-zeta, mp.sqrt(1 - zeta**2))
+        step = (1 + loop.at(pole)) / loop.log_slope(pole)
+        assert abs(step) < 1e-7 * size  # a root of 1 + L, where L = −1 and so L' = −L'/L
+
+
+def _shifted(loop: Loop, sigma: mpf) -> Loop:
+    """L(s − sigma): its closed-loop poles lie sigma further right."""
+    c, p = loop.compensator, loop.plant
+    parts = [Part(x.gain, tuple(z + sigma for z in x.zeros), tuple(q + sigma for q in x.poles)) for x in (c, p)]
+    grown = Part(parts[1].gain * mp.exp(sigma * loop.dead_time_s), parts[1].zeros, parts[1].poles)
+    return Loop(parts[0], grown, loop.dead_time_s)
 
 
 @each([e for e in DELAYED if len(loop_of_design(e["design"]).rational.poles) <= 5][:10])
