@@ -173,7 +173,7 @@ def _chain(p: Characteristic, region: _Region) -> ComplexArray:
 
 
 def _polished(p: Characteristic, starts: Sequence[ComplexArray], region: _Region) -> list[ComplexArray]:
-    """Roots in the region that the start values lead to, each once."""
+    """Roots in the region that the start values lead to; company keeps two from reaching one root."""
     longest = max(len(each) for each in starts)
     s = np.full((len(starts), longest), 1.0 + 0.0j)
     live = np.zeros(s.shape, dtype=np.bool_)
@@ -183,7 +183,7 @@ def _polished(p: Characteristic, starts: Sequence[ComplexArray], region: _Region
     theta = np.ones(len(s)) if p.dead_time is None else p.dead_time
     # One link of the chain more, so that the upper edge can be laid between two.
     inside = settled & (s.real > region.left[:, None]) & (s.imag < (region.top + 2.2 * math.pi / theta)[:, None])
-    return [_each_once(row[own]) for row, own in zip(s, inside, strict=True)]
+    return [_upper_half(row[own]) for row, own in zip(s, inside, strict=True)]
 
 
 def _iterate(p: Characteristic, s: ComplexArray, live: BoolArray, region: _Region) -> tuple[ComplexArray, BoolArray]:
@@ -217,17 +217,21 @@ def _iterate(p: Characteristic, s: ComplexArray, live: BoolArray, region: _Regio
     return s, settled
 
 
-def _each_once(roots: ComplexArray) -> ComplexArray:
-    """In the closed upper half plane, real where they are, without copies, by size."""
+def _upper_half(roots: ComplexArray) -> ComplexArray:
+    """Reflected into the closed upper half plane, real where they are within rounding, by size."""
     upper = np.where(roots.imag < 0.0, roots.conj(), roots)
-    real = np.abs(upper.imag) <= 1e-12 * np.abs(upper)
-    upper = np.where(real, upper.real + 0.0j, upper)
-    upper = upper[np.lexsort((upper.real, np.abs(upper)))]
-    kept: list[complex] = []
-    for root in upper.tolist():
-        if all(abs(root - other) > 1e-9 * abs(root) for other in kept[-6:]):
+    upper = np.where(np.abs(upper.imag) <= 1e-12 * np.abs(upper), upper.real + 0.0j, upper)
+    ordered: ComplexArray = upper[np.lexsort((upper.real, np.abs(upper)))]
+    return ordered
+
+
+def _with_new(own: ComplexArray, more: ComplexArray) -> ComplexArray:
+    """The roots known, and of the others those that are not among them."""
+    kept = own.tolist()
+    for root in more.tolist():
+        if all(abs(root - other) > 1e-7 * abs(root) for other in kept):
             kept.append(root)
-    return np.array(kept, dtype=np.complex128)
+    return _upper_half(np.array(kept, dtype=np.complex128))
 
 
 def _checked(p: Characteristic, found: list[ComplexArray], region: _Region, scale: FloatArray) -> list[DominantRoots]:
@@ -242,10 +246,7 @@ def _checked(p: Characteristic, found: list[ComplexArray], region: _Region, scal
             break
         extra = _more_starts(p, region, found, missing, attempt)
         again = _polished(p, extra, region)
-        found = [
-            _each_once(np.concatenate([own, more])) if lacks else own
-            for own, more, lacks in zip(found, again, missing, strict=True)
-        ]
+        found = [_with_new(own, more) if lacks else own for own, more, lacks in zip(found, again, missing, strict=True)]
     above = _above(p, region)
     return [
         DominantRoots(
@@ -273,7 +274,7 @@ def _above(p: Characteristic, region: _Region) -> list[ComplexArray]:
             s = s - value / slope
     reach = np.maximum(np.abs(poles.real), 1.0 / theta[:, None])
     kept = light & (np.abs(s - poles) < 0.5 * reach)
-    return [_each_once(row[own]) for row, own in zip(s, kept, strict=True)]
+    return [_upper_half(row[own]) for row, own in zip(s, kept, strict=True)]
 
 
 def _inside(roots: ComplexArray, region: _Region, case: int) -> ComplexArray:

@@ -39,9 +39,10 @@ class ModalSums:
             return self
         return ModalSums(self.exponents[cases], self.weights[cases], self.offset[cases], self.slope[cases])
 
-    def size(self) -> FloatArray:
-        """(c, 3) Σ|weight|, which bounds how far a stable response strays from its asymptote."""
-        total: FloatArray = np.abs(self.weights).sum(axis=2)
+    def size(self, from_s: FloatArray) -> FloatArray:
+        """(c, 3) Σ|weight| at the instants (c,): bounds how far a stable response strays from its asymptote."""
+        decayed = np.exp(np.minimum(self.exponents.real * from_s[:, None], 600.0))
+        total: FloatArray = (np.abs(self.weights) * decayed[:, None, :]).sum(axis=2)
         return total
 
     def quickest_s(self) -> float:
@@ -63,12 +64,15 @@ class ModalSums:
 
 @dataclass(frozen=True, eq=False)
 class Transfers:
-    """The three closed-loop transfer functions in scaled time: gain·numerator/(lead·Π(s − λ))."""
+    """The three closed-loop transfer functions in scaled time: gain·numerator/(D + N).
+
+    Without dead time the denominator is Π(s − λ), its leading coefficient taken into the gain.
+    """
 
     scale: FloatArray
     """(c,) [rad/s]; s and the roots are divided by it."""
     gain: FloatArray
-    """(c, 3) over the leading coefficient of D + N."""
+    """(c, 3) of the loop, the plant and the compensator; over the leading coefficient of D + N without dead time."""
     parts: tuple[RootTable, RootTable, RootTable, RootTable]
     """Zeros and poles of the compensator, zeros and poles of the plant."""
     roots: ComplexArray
@@ -77,23 +81,53 @@ class Transfers:
     """(c, n)"""
     excess: NDArray[np.int64]
     """(c, 3) degree of the numerator minus that of D + N; above 0 a step causes an impulse."""
+    dead_time_s: FloatArray | None = None
+    """(c,) [s], of the plant; None for loops without."""
+
+    @property
+    def delay(self) -> FloatArray:
+        """(c,) dead time in scaled time."""
+        return np.zeros(len(self.scale)) if self.dead_time_s is None else self.dead_time_s * self.scale
 
     def numerators(self, s: ComplexArray) -> ComplexArray:
         """(c, 3, k) gain·numerator at s (c, k)."""
         zc, pc, zp, pp = (np.multiply.reduce(part.factors(s), axis=0) for part in self.parts)
+        if self.dead_time_s is not None:
+            # The plant carries the dead time: it is in L and P, not in the effort's numerator.
+            zp = zp * np.exp(-s * self.delay[:, None])
         products: ComplexArray = self.gain[:, :, None] * np.stack([zc * zp, zp * pc, zc * pp], axis=1)
         return products
 
     def denominator(self, s: ComplexArray) -> ComplexArray:
-        """(c, k) Π(s − λ) at s (c, k)."""
+        """(c, k) the denominator at s (c, k)."""
+        if self.dead_time_s is not None:
+            zc, pc, zp, pp = (np.multiply.reduce(part.factors(s), axis=0) for part in self.parts)
+            total: ComplexArray = pc * pp + self.gain[:, :1] * zc * zp * np.exp(-s * self.delay[:, None])
+            return total
         factors = np.where(self.live.T[:, :, None], s - self.roots.T[:, :, None], 1.0)
         product: ComplexArray = np.multiply.reduce(factors, axis=0)
         return product
 
+    def slopes(self, s: ComplexArray, place: NDArray[np.int64] | None) -> ComplexArray:
+        """(c, k) derivative of the denominator at s (c, k); without dead time s are the roots number `place`."""
+        if place is not None:
+            gaps = np.where(self.live.T[:, :, None], s - self.roots.T[:, :, None], 1.0)
+            gaps[place, np.arange(len(s))[:, None], np.arange(s.shape[1])] = 1.0
+            product: ComplexArray = np.multiply.reduce(gaps, axis=0)
+            return product
+        at = [part.factors(s) for part in self.parts]
+        # A root that pole and zero share would make 0·∞ of a derivative that is finite.
+        at = [np.where(each == 0.0, 1e-150, each) for each in at]
+        zc, pc, zp, pp = (np.multiply.reduce(each, axis=0) for each in at)
+        rates = [np.add.reduce(part.mask / each, axis=0) for part, each in zip(self.parts, at, strict=True)]
+        n = self.gain[:, :1] * zc * zp * np.exp(-s * self.delay[:, None])
+        slope: ComplexArray = pc * pp * (rates[1] + rates[3]) + n * (rates[0] + rates[2] - self.delay[:, None])
+        return slope
 
-def transfers_of(loops: LoopSet, roots: ClosedLoopRoots, scale: FloatArray | None = None) -> Transfers:
-    """Transfer functions from the loop parts and the closed-loop roots; dead time left out."""
-    scale = time_scales(loops.loops) if scale is None else scale
+
+def transfers_of(loops: LoopSet, roots: ClosedLoopRoots) -> Transfers:
+    """Transfer functions of loops all without, or all with dead time, from their parts and closed-loop roots."""
+    scale = time_scales(loops.loops)
     plants, compensator = loops.plants, loops.compensator
     parts = tuple(
         root_table(lists).scaled(scale)
@@ -111,15 +145,20 @@ def transfers_of(loops: LoopSet, roots: ClosedLoopRoots, scale: FloatArray | Non
     gain_c = compensator.gain * scale ** float(zeros_c - poles_c)
     live = np.arange(roots.roots.shape[1]) < roots.count[:, None]
     scaled_roots = roots.roots / scale[:, None]
-    lead = _leading(gain_c * gain_p, zeros_c + zeros_p, poles_c + poles_p, roots.count)
+    dead_time_s = np.array([loop.dead_time_s for loop in loops.loops])
+    orders = np.maximum(zeros_c + zeros_p, poles_c + poles_p) if dead_time_s.any() else roots.count
     transfers = Transfers(
         scale,
         np.stack([gain_c * gain_p, gain_p, np.broadcast_to(gain_c, scale.shape)], axis=1),
         (parts[0], parts[1], parts[2], parts[3]),
         scaled_roots,
         live,
-        np.stack([zeros_c + zeros_p, zeros_p + poles_c, zeros_c + poles_p], axis=1) - roots.count[:, None],
+        np.stack([zeros_c + zeros_p, zeros_p + poles_c, zeros_c + poles_p], axis=1) - orders[:, None],
+        dead_time_s if dead_time_s.any() else None,
     )
+    if transfers.dead_time_s is not None:
+        return transfers
+    lead = _leading(gain_c * gain_p, zeros_c + zeros_p, poles_c + poles_p, roots.count)
     if np.isnan(lead).any():
         lead = np.where(np.isnan(lead), _leading_of_algebraic(transfers), lead)
     return Transfers(scale, transfers.gain / lead[:, None], transfers.parts, scaled_roots, live, transfers.excess)
@@ -143,7 +182,7 @@ def _leading_of_algebraic(transfers: Transfers) -> FloatArray:
 
 
 def modal_sums(transfers: Transfers, amplitudes: FloatArray, integrations: NDArray[np.int64]) -> ModalSums:
-    """Responses to amplitude/s^integrations per row, from simple roots.
+    """Responses to amplitude/s^integrations per row, from simple roots; with dead time for as late as they suffice.
 
     Parameters
     ----------
@@ -151,13 +190,11 @@ def modal_sums(transfers: Transfers, amplitudes: FloatArray, integrations: NDArr
     integrations : (3,) 1 for a step, 2 for a ramp
     """
     upper, place, present = _upper_half(transfers)
-    cases = np.arange(len(transfers.scale))[:, None]
-    gaps = np.where(transfers.live.T[:, :, None], upper - transfers.roots.T[:, :, None], 1.0)
-    gaps[place, cases, np.arange(upper.shape[1])] = 1.0
     with np.errstate(all="ignore"):
         points = np.concatenate([upper, np.zeros((len(upper), 1))], axis=1)
         at = transfers.numerators(points) * amplitudes[:, None]
-        step = at[:, :, :-1] / (np.multiply.reduce(gaps, axis=0) * upper)[:, None, :]
+        slopes = transfers.slopes(upper, place if transfers.dead_time_s is None else None)
+        step = at[:, :, :-1] / (slopes * upper)[:, None, :]
         final = (at[:, :, -1] / transfers.denominator(points[:, -1:])).real
         twice = np.where(upper.imag > 0.0, 2.0, 1.0)
         weights = np.where(present[:, None, :], step * twice[:, None, :], 0.0)
@@ -183,25 +220,36 @@ def _upper_half(transfers: Transfers) -> tuple[ComplexArray, NDArray[np.int64], 
 
 def _slope_at_zero(transfers: Transfers, amplitudes: FloatArray, final: FloatArray) -> FloatArray:
     """(c, 3) dG/ds at 0 [s], times the amplitude: where the ramp response's asymptote crosses t = 0."""
-    zero_sum = [
-        (part.mask * np.where(part.roots == 0.0, 0.0, -1.0 / np.where(part.roots == 0.0, 1.0, part.roots))).sum(axis=0)
-        for part in transfers.parts
-    ]
-    at_origin = [np.count_nonzero((part.roots == 0.0) & (part.mask > 0.0), axis=0)[:, 0] for part in transfers.parts]
-    zc, pc, zp, pp = (each[:, 0] for each in zero_sum)
-    own = np.stack([zc + zp, zp + pc, zc + pp], axis=1)
-    nc, dc, np_, dp = at_origin
-    multiplicity = np.stack([nc + np_, np_ + dc, nc + dp], axis=1)
+    origin = np.zeros((len(final), 1), dtype=np.complex128)
+    n, n_slope, d_slope = _numerators_at_zero(transfers)
     with np.errstate(all="ignore"):
-        poles = np.add.reduce(np.where(transfers.live, -1.0 / transfers.roots, 0.0), axis=1)
-        log_derivative = (own - poles[:, None]).real
-        # One zero at the origin: the derivative is the rest of the numerator there.
-        rest = [
-            np.multiply.reduce(np.where((part.roots == 0.0) & (part.mask > 0.0), 1.0, -part.roots), axis=0)[:, 0]
-            for part in transfers.parts
-        ]
-        single = transfers.gain * np.stack([rest[0] * rest[2], rest[2] * rest[1], rest[0] * rest[3]], axis=1)
-        single = (single / transfers.denominator(np.zeros((len(final), 1), dtype=np.complex128))).real
-    slope = np.where(multiplicity == 0, final * log_derivative, np.where(multiplicity == 1, single * amplitudes, 0.0))
+        whole = transfers.denominator(origin).real
+        if transfers.dead_time_s is None:
+            fall = np.add.reduce(np.where(transfers.live, -1.0 / transfers.roots, 0.0), axis=1).real[:, None]
+        else:
+            delay = transfers.delay[:, None]
+            n_slope = n_slope - delay * n * np.array([1.0, 1.0, 0.0])
+            fall = (d_slope + n_slope[:, :1]) / whole
+        slope = n_slope * amplitudes / whole - final * fall
     scaled: FloatArray = slope / transfers.scale[:, None]
     return scaled
+
+
+def _numerators_at_zero(transfers: Transfers) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """(c, 3) gain·numerators at 0 and their derivatives without dead time, and (c, 1) the derivative of D."""
+    values, slopes = zip(*(_product_and_slope(part) for part in transfers.parts), strict=True)
+    pairs = ((0, 2), (2, 1), (0, 3))
+    products = transfers.gain * np.stack([values[a] * values[b] for a, b in pairs], axis=1)
+    derivatives = transfers.gain * np.stack([values[a] * slopes[b] + slopes[a] * values[b] for a, b in pairs], axis=1)
+    return products, derivatives, (values[1] * slopes[3] + slopes[1] * values[3])[:, None]
+
+
+def _product_and_slope(table: RootTable) -> tuple[FloatArray, FloatArray]:
+    """(c,) Π(0 − root) and its derivative."""
+    at_origin = (table.roots == 0.0) & (table.mask > 0.0)
+    others = np.where(at_origin, 1.0, -table.roots)
+    multiplicity = np.count_nonzero(at_origin, axis=0)[:, 0]
+    rest = np.multiply.reduce(others, axis=0)[:, 0].real
+    log_slope = np.add.reduce(np.where(at_origin, 0.0, table.mask / others), axis=0)[:, 0].real
+    value = np.where(multiplicity == 0, rest, 0.0)
+    return value, np.where(multiplicity == 0, rest * log_slope, np.where(multiplicity == 1, rest, 0.0))

@@ -54,7 +54,12 @@ def _bounds(size: FloatArray, turn: FloatArray, scale: FloatArray) -> tuple[Floa
 
 def modal_net(sums: ModalSums) -> Net:
     """Instants from well before the fastest mode that counts has moved to where every mode has died out."""
-    time_s = _net_instants(sums)
+    return late_net(sums, np.zeros(len(sums.offset)))
+
+
+def late_net(sums: ModalSums, from_s: FloatArray) -> Net:
+    """The same from the instants (c,) at which the sums begin to hold."""
+    time_s = _net_instants(sums, from_s)
     basis = np.exp(sums.exponents[:, :, None] * time_s[:, None, :])
     value = _values(sums, basis)
     scale = np.maximum(np.abs(value).max(axis=2), np.abs(sums.offset))
@@ -83,9 +88,9 @@ def _fastest_alive(size: FloatArray, decay: FloatArray, turn: FloatArray, scale:
     return turns
 
 
-def _net_instants(sums: ModalSums) -> FloatArray:
-    """(c, k) 0 and a geometric sequence."""
-    size = np.abs(sums.weights)
+def _net_instants(sums: ModalSums, from_s: FloatArray) -> FloatArray:
+    """(c, k) the first instant and a geometric sequence from there."""
+    size = np.abs(sums.weights) * np.exp(sums.exponents.real * from_s[:, None])[:, None, :]
     total = size.sum(axis=2, keepdims=True)
     with np.errstate(divide="ignore", invalid="ignore"):
         share = np.where(total > 0.0, size / total, 0.0).max(axis=1)
@@ -97,4 +102,4 @@ def _net_instants(sums: ModalSums) -> FloatArray:
     times = np.empty((len(end), NET_INSTANTS))
     times[:, 0] = 0.0
     times[:, 1:] = start[:, None] * (end / start)[:, None] ** steps
-    return times
+    return times + from_s[:, None]

@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.loop.modal import ModalSums, Transfers
+from engine.loop.rings import components
 from engine.model.factored import ComplexArray, FloatArray
 
 # Link distances tried, widest first, relative to how far a root lies from the imaginary axis.
@@ -28,25 +29,27 @@ def with_rings(
     cases: NDArray[np.int64],
     amplitudes: FloatArray,
     integrations: NDArray[np.int64],
+    from_s: FloatArray,
     horizon_s: float = np.inf,
 ) -> ModalSums:
     """The sums with each crowd of roots of `cases` replaced by a ring of nodes.
 
-    Rings at the imaginary axis, which cannot stay left of it, are kept small enough to serve up to `horizon_s`.
+    The sums hold from the instants `from_s` (c,) on. Rings at the imaginary axis, which cannot stay left of it, are
+    kept small enough to serve up to `horizon_s`.
     """
     replaced = {}
     for case in cases.tolist():
-        made = _ringed(transfers, case, amplitudes, integrations, 10.0 / (horizon_s * transfers.scale[case]))
+        heavy = _heavy(sums, case, float(from_s[case]))
+        widest = 10.0 / (horizon_s * transfers.scale[case])
+        made = _ringed(sums, transfers, case, amplitudes, integrations, heavy, widest)
         if made is not None:
             replaced[case] = made
     if not replaced:
         return sums
     width = max(sums.exponents.shape[1], *(len(exponents) for exponents, _, _ in replaced.values()))
-    count = len(sums.exponents)
-    exponents = np.full((count, width), -1.0 + 0.0j)
-    weights = np.zeros((count, 3, width), dtype=np.complex128)
-    exponents[:, : sums.exponents.shape[1]] = sums.exponents
-    weights[:, :, : sums.exponents.shape[1]] = sums.weights
+    more = width - sums.exponents.shape[1]
+    exponents = np.pad(sums.exponents, ((0, 0), (0, more)), constant_values=-1.0)
+    weights = np.pad(sums.weights, ((0, 0), (0, 0), (0, more)))
     offset, slope = sums.offset.copy(), sums.slope.copy()
     for case, (own_exponents, own_weights, steady) in replaced.items():
         exponents[case], weights[case] = -1.0, 0.0
@@ -57,80 +60,81 @@ def with_rings(
     return ModalSums(exponents, weights, offset, slope)
 
 
+def _heavy(sums: ModalSums, case: int, from_s: float) -> NDArray[np.bool_]:
+    """(m,) which weights are among those that cancel: within a hundredth of the largest."""
+    with np.errstate(all="ignore"):
+        size = np.abs(sums.weights[case]) * np.exp(np.minimum(sums.exponents[case].real * from_s, 600.0))
+        heavy: NDArray[np.bool_] = ~(size < 0.01 * size.max(axis=1, keepdims=True)).all(axis=0)
+    return heavy
+
+
 def _ringed(
-    transfers: Transfers, case: int, amplitudes: FloatArray, integrations: NDArray[np.int64], widest: float
+    sums: ModalSums,
+    transfers: Transfers,
+    case: int,
+    amplitudes: FloatArray,
+    integrations: NDArray[np.int64],
+    heavy: NDArray[np.bool_],
+    widest: float,
 ) -> tuple[ComplexArray, ComplexArray, bool] | None:
     """Exponents [rad/s], weights (3, m), and whether the input's own pole at 0 stays outside the rings."""
     roots = transfers.roots[case, transfers.live[case]]
-    found = _grouping(np.concatenate([roots, [0.0]]), widest)
+    # The sums list the roots of the upper half plane in the order of all roots.
+    upper = np.flatnonzero(roots.imag >= 0.0)
+    weighty = np.zeros(len(roots) + 1, dtype=np.bool_)
+    weighty[upper] = heavy[: len(upper)]
+    found = _grouping(np.concatenate([roots, [0.0]]), weighty, widest)
     if found is None:
         return None
-    label, rings = found
-    single = [k for k in range(len(roots)) if np.count_nonzero(label == label[k]) == 1 and roots[k].imag >= 0.0]
-    exponents = [roots[single]]
-    twice = np.where(roots[single].imag > 0.0, 2.0, 1.0)
-    denominator = np.array([np.prod(np.delete(roots[k] - roots, k)) for k in single], dtype=np.complex128)
-    weights = [_driven(transfers, case, roots[single], denominator, amplitudes, integrations) * twice]
+    ringed, rings = found
+    single = np.flatnonzero(~ringed[upper])
+    exponents, weights = [sums.exponents[case, single]], [sums.weights[case][:, single]]
     for centre, radius, nodes in rings:
         turn = 2.0 * np.pi * (np.arange(nodes) + 0.5) / nodes
         if centre.imag == 0.0:
             turn = turn[turn < np.pi]
         arm = radius * np.exp(1j * turn)
-        s = centre + arm
-        whole = np.prod(s[:, None] - roots, axis=1)
-        exponents.append(s)
-        weights.append(_driven(transfers, case, s, whole, amplitudes, integrations) * arm * (2.0 / nodes))
-    steady = np.count_nonzero(label == label[-1]) == 1
-    return np.concatenate(exponents) * transfers.scale[case], np.concatenate(weights, axis=1), steady
+        exponents.append((centre + arm) * transfers.scale[case])
+        weights.append(_driven(transfers, case, centre + arm, amplitudes, integrations) * arm * (2.0 / nodes))
+    return np.concatenate(exponents), np.concatenate(weights, axis=1), not ringed[-1]
 
 
 def _driven(
-    transfers: Transfers,
-    case: int,
-    s: ComplexArray,
-    denominator: ComplexArray,
-    amplitudes: FloatArray,
-    integrations: NDArray[np.int64],
+    transfers: Transfers, case: int, s: ComplexArray, amplitudes: FloatArray, integrations: NDArray[np.int64]
 ) -> ComplexArray:
-    """(3, k) amplitude·numerator/(denominator·s^integrations), the latter in unscaled time."""
+    """(3, k) the transforms of the responses at s (k,), the input's poles in unscaled time where there are two."""
     points = np.full((len(transfers.scale), len(s)), 1.0 + 0.0j)
     points[case] = s
-    step = transfers.numerators(points)[case] * amplitudes[:, None] / (denominator * s)
+    with np.errstate(all="ignore"):
+        transfer = transfers.numerators(points)[case] / transfers.denominator(points)[case]
+    step = transfer * amplitudes[:, None] / s
     ramp = integrations[:, None] == 2
     driven: ComplexArray = np.where(ramp, step / (s * transfers.scale[case]), step)
     return driven
 
 
-def _grouping(points: ComplexArray, widest: float) -> tuple[NDArray[np.int64], list[tuple[complex, float, int]]] | None:
-    """A group label per point, and centre, radius and number of nodes of the rings of the upper half plane.
+def _grouping(
+    points: ComplexArray, heavy: NDArray[np.bool_], widest: float
+) -> tuple[NDArray[np.bool_], list[tuple[complex, float, int]]] | None:
+    """Which points lie in rings, and centre, radius and number of nodes of the rings of the upper half plane.
 
-    The last point is the input's own pole. None where no reach gives groups that stand apart.
+    The last point is the input's own pole. A heavy point that stands alone gets a ring of its own: it may be a double
+    root found once. None where no reach gives groups that stand apart.
     """
     distance = np.abs(points[:, None] - points)
     depth = np.abs(points.real)
     near = np.minimum(depth[:, None], depth)
     for reach in REACHES:
-        label = _components(distance <= np.maximum(reach * near, 1e-9))
+        # What a root moves within the horizon decides as well: e^{λt} − 1 cancels for a root that hardly moves.
+        label = components(distance <= np.maximum(reach * near, max(1e-9, 0.1 * reach * widest)))
         groups = [np.flatnonzero(label == each) for each in np.unique(label)]
-        crowded = [group for group in groups if len(group) > 1]
-        if not crowded:
-            return None
+        crowded = [group for group in groups if len(group) > 1 or heavy[group].any()]
         rings = [_ring(points, group, widest) for group in crowded]
         whole = [ring for ring in rings if ring is not None]
-        if len(whole) == len(rings):
-            return label, [ring for ring in whole if ring[0].imag >= 0.0]
+        if crowded and len(whole) == len(rings):
+            ringed = np.isin(np.arange(len(points)), np.concatenate(crowded))
+            return ringed, [ring for ring in whole if ring[0].imag >= 0.0]
     return None
-
-
-def _components(linked: NDArray[np.bool_]) -> NDArray[np.int64]:
-    """Label of the connected component of each point."""
-    label = np.arange(len(linked))
-    for _ in range(len(linked)):
-        joined = np.where(linked, label, len(linked)).min(axis=1)
-        if np.array_equal(joined, label):
-            break
-        label = joined
-    return label
 
 
 def _ring(points: ComplexArray, group: NDArray[np.int64], widest: float) -> tuple[complex, float, int] | None:
@@ -139,7 +143,7 @@ def _ring(points: ComplexArray, group: NDArray[np.int64], widest: float) -> tupl
     centre = complex(members.mean())
     if abs(centre.imag) <= 1e-12 * abs(centre):
         centre = complex(centre.real, 0.0)
-    inner = float(np.abs(members - centre).max())
+    inner = max(float(np.abs(members - centre).max()), 1e-7 * abs(centre))
     outer = float(np.abs(others - centre).min()) if len(others) else np.inf
     # Nodes right of the imaginary axis would grow; a group at the axis itself cannot avoid that.
     if len(points) - 1 not in group and abs(centre.real) > 1e-3 * widest:

@@ -19,7 +19,7 @@ STEPS = np.array([1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0, 10.0])
 
 @dataclass(frozen=True, eq=False)
 class TimeGrid:
-    """0, a geometric and a uniform sequence up to the horizon, merged in order."""
+    """0, a geometric sequence, kinks, and a uniform sequence up to the horizon, merged in order."""
 
     time_s: FloatArray
     """(n,) increasing, from 0 (which stands for the instant just after the step)."""
@@ -47,11 +47,19 @@ def _exponential(exponents: ComplexArray, time_s: FloatArray) -> ComplexArray:
     return raised
 
 
-def time_grid(horizon_s: float, earliest_s: float) -> TimeGrid:
-    """About 400 instants from 0 to the horizon [s]; the geometric part begins at `earliest_s`."""
+def time_grid(horizon_s: float, earliest_s: float, kinks_s: FloatArray) -> TimeGrid:
+    """About 400 instants from 0 to the horizon [s].
+
+    Parameters
+    ----------
+    earliest_s : where the geometric part begins
+    kinks_s : (k,) instants at which a response may jump: shown just before and after
+    """
     first = min(max(earliest_s, EARLIEST * horizon_s), 0.01 * horizon_s)
     step = horizon_s / (COARSE * FINE - 1)
     geometric = np.geomspace(first, horizon_s - 0.5 * step, GEOMETRIC)
+    kinks = np.unique(kinks_s[kinks_s < horizon_s])
+    geometric = np.concatenate([geometric, np.nextafter(kinks, 0.0), kinks])
     coarse: FloatArray = np.arange(float(COARSE)) * (FINE * step)
     fine: FloatArray = np.arange(float(FINE)) * step
     uniform = (coarse[:, None] + fine).ravel()

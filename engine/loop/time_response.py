@@ -10,24 +10,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.loop.loop_set import LoopSet
-from engine.loop.modal import ModalSums, Transfers, modal_sums, transfers_of
-from engine.loop.modal_responses import ModalResponses, modal_net
-from engine.loop.mode_groups import with_rings
 from engine.loop.reading import Reading, without_value
-from engine.loop.response_search import Net
-from engine.loop.step_measures import MEASURES, step_readings
+from engine.loop.response_family import RAMP, STEP, Family, families_of
+from engine.loop.step_measures import MEASURES
 from engine.loop.time_grid import round_horizon, time_grid
 from engine.model.factored import FloatArray
 
 if TYPE_CHECKING:
     from engine.loop.frequency import FrequencyView
 
-# Σ|weight| over the size of the response beyond which the residues are taken to cancel.
-CANCELLING = 1e5
 # An unstable response is shown up to this many times the size it has within reason.
 SENSIBLE = 20.0
-STEP = np.array([1, 1, 1])
-RAMP = np.array([2, 1, 2])
 
 
 @dataclass(frozen=True)
@@ -78,63 +71,44 @@ def read_time(loops: LoopSet, view: FrequencyView, scenario: Scenario) -> TimeVi
     Values are within 1e-6 of each response's peak everywhere, as are readings; a response that begins with an impulse
     (more zeros than poles) is shown without it.
     """
-    transfers = transfers_of(loops, view.roots)
+    integrations = RAMP if scenario.command_shape == "ramp" else STEP
+    families = families_of(loops, view.roots, scenario.amplitudes, integrations)
     stable = np.array([case.stable for case in view.cases]) & ~np.any(view.roots.roots.real >= 0.0, axis=1)
-    shown, steps = _sums(transfers, scenario)
-    rows = np.flatnonzero(stable)
-    net = None
-    if len(rows):
-        steps, net = _well_conditioned(steps, transfers, rows, scenario)
-        if scenario.command_shape == "step":
-            shown = steps
-    readings = _readings(transfers, steps, rows, net, view)
-    horizon = scenario.horizon_s or _horizon(readings, transfers, stable)
-    curves, time_s = _curves(shown, transfers, scenario, horizon, stable, net)
-    cases = tuple(CaseTime(each, _notices(transfers, case)) for case, each in enumerate(readings))
+    readings, sizes = _readings(families, stable, view)
+    horizon = scenario.horizon_s or _horizon(readings, view, stable, loops)
+    curves, time_s = _curves(families, horizon, loops.count)
+    if not stable.all():
+        _cut_off(curves, time_s, view, scenario, stable, sizes)
+    excess = np.empty((loops.count, 3), dtype=np.int64)
+    for family in families:
+        excess[family.cases] = family.transfers.excess
+    cases = tuple(CaseTime(each, _notices(excess[case].tolist())) for case, each in enumerate(readings))
     return TimeView(time_s, curves[:, 0], curves[:, 1], curves[:, 2], cases)
 
 
-def _sums(transfers: Transfers, scenario: Scenario) -> tuple[ModalSums, ModalSums]:
-    """The responses shown, and those to the step that readings come from."""
-    steps = modal_sums(transfers, scenario.amplitudes, STEP)
-    if scenario.command_shape == "step":
-        return steps, steps
-    return modal_sums(transfers, scenario.amplitudes, RAMP), steps
-
-
-def _well_conditioned(
-    steps: ModalSums, transfers: Transfers, rows: NDArray[np.int64], scenario: Scenario
-) -> tuple[ModalSums, Net]:
-    """Step responses of all cases, residues of the stable ones not cancelling, and the net over the stable cases."""
-    own = steps.of(rows)
-    if np.isfinite(own.weights).all():
-        net = modal_net(own)
-        if not np.any(own.size() > CANCELLING * net.scale):
-            return steps, net
-        crowded = rows[np.any(own.size() > CANCELLING * net.scale, axis=1)]
-    else:
-        crowded = rows
-    steps = with_rings(steps, transfers, crowded, scenario.amplitudes, STEP)
-    return steps, modal_net(steps.of(rows))
-
-
 def _readings(
-    transfers: Transfers, steps: ModalSums, rows: NDArray[np.int64], net: Net | None, view: FrequencyView
-) -> list[dict[str, Reading]]:
-    """Readings per case."""
+    families: Sequence[Family], stable: NDArray[np.bool_], view: FrequencyView
+) -> tuple[list[dict[str, Reading]], FloatArray]:
+    """Readings per case, and (3,) the largest size of each response over the stable ones."""
     readings = [
         dict.fromkeys(MEASURES, without_value("unstable", case.stability or "the closed loop is not stable"))
         for case in view.cases
     ]
-    if net is not None:
-        own = steps.of(rows)
-        found = step_readings(net, own.offset, ModalResponses(own, net.scale), transfers.excess[rows] > 0)
-        for case, each in zip(rows.tolist(), found, strict=True):
+    sizes = np.zeros(3)
+    for family in families:
+        rows = np.flatnonzero(stable[family.cases])
+        if not len(rows):
+            continue
+        found, scale = family.read(rows)
+        sizes = np.maximum(sizes, scale.max(axis=0))
+        for case, each in zip(family.cases[rows].tolist(), found, strict=True):
             readings[case] = each
-    return readings
+    return readings, sizes
 
 
-def _horizon(readings: Sequence[dict[str, Reading]], transfers: Transfers, stable: NDArray[np.bool_]) -> float:
+def _horizon(
+    readings: Sequence[dict[str, Reading]], view: FrequencyView, stable: NDArray[np.bool_], loops: LoopSet
+) -> float:
     """Long enough for the stable cases to settle, or for an instability to show."""
     spans = []
     for case, each in enumerate(readings):
@@ -142,71 +116,56 @@ def _horizon(readings: Sequence[dict[str, Reading]], transfers: Transfers, stabl
         if stable[case] and max(settled) > 0.0:
             spans.append(max(settled))
     if not spans:
-        spans = [_own_span(transfers, case) for case in range(len(stable))]
+        spans = [_own_span(view, case, loops.loops[case].dead_time_s) for case in range(len(stable))]
     # One case that hardly settles must not squeeze the others into a corner.
     return round_horizon(1.25 * min(max(spans), 5.0 * float(np.median(spans))))
 
 
-def _own_span(transfers: Transfers, case: int) -> float:
+def _own_span(view: FrequencyView, case: int, dead_time_s: float) -> float:
     """A few time constants of the root that moves slowest, or of the growth."""
-    roots = transfers.roots[case, transfers.live[case]] * transfers.scale[case]
+    roots = view.roots.roots[case, : view.roots.count[case]]
     moving = roots[np.abs(roots) > 0.0]
     if not len(moving):
-        return 1.0
+        return 6.0 * dead_time_s or 1.0
     growing = moving[moving.real > 1e-3 * np.abs(moving)]
     if len(growing):
-        return float(4.0 / growing.real.max())
+        return float(4.0 / growing.real.max()) + 3.0 * dead_time_s
     return float(40.0 / np.abs(moving).min())
 
 
-def _curves(
-    shown: ModalSums,
-    transfers: Transfers,
-    scenario: Scenario,
-    horizon: float,
-    stable: NDArray[np.bool_],
-    net: Net | None,
-) -> tuple[FloatArray, FloatArray]:
+def _curves(families: Sequence[Family], horizon: float, count: int) -> tuple[FloatArray, FloatArray]:
     """(c, 3, n) responses and (n,) instants [s]."""
-    grid = time_grid(horizon, 0.05 * shown.quickest_s())
-    with np.errstate(all="ignore"):
-        curves = shown.sample(grid.basis(shown.exponents), grid.time_s)
-        reach = np.nanmax(np.abs(curves), axis=2, initial=0.0)
-        crowded = np.flatnonzero(~np.all(shown.size() <= CANCELLING * reach, axis=1))
-        if len(crowded):
-            integrations = STEP if scenario.command_shape == "step" else RAMP
-            shown = with_rings(shown, transfers, crowded, scenario.amplitudes, integrations, horizon)
-            curves = shown.sample(grid.basis(shown.exponents), grid.time_s)
-    if not stable.all():
-        _cut_off(curves, grid.time_s, transfers, scenario, stable, net)
+    quickest = min(family.shown.quickest_s() for family in families)
+    grid = time_grid(horizon, 0.05 * quickest, np.concatenate([family.kinks_s() for family in families]))
+    curves = np.empty((count, 3, len(grid.time_s)))
+    for family in families:
+        curves[family.cases] = family.sample(grid)
     return curves, grid.time_s
 
 
 def _cut_off(
     curves: FloatArray,
     time_s: FloatArray,
-    transfers: Transfers,
+    view: FrequencyView,
     scenario: Scenario,
     stable: NDArray[np.bool_],
-    net: Net | None,
+    sizes: FloatArray,
 ) -> None:
     """nan once an unstable response has grown to SENSIBLE times what it was before the growth took over."""
-    floor = np.array([abs(scenario.command_amplitude), 0.0, 0.0])
-    if net is not None:
-        floor = np.maximum(floor, net.scale.max(axis=0))
+    floor = np.maximum(np.array([abs(scenario.command_amplitude), 0.0, 0.0]), sizes)
     for case in np.flatnonzero(~stable).tolist():
-        roots = transfers.roots[case, transfers.live[case]] * transfers.scale[case]
+        roots = view.roots.roots[case, : view.roots.count[case]]
         growth = float(roots.real.max(initial=0.0))
-        early = time_s * growth <= 1.0
-        size = np.nanmax(np.abs(curves[case][:, early]), axis=1)
+        early = np.abs(curves[case][:, time_s * growth <= 1.0])
+        size = np.where(np.isfinite(early), early, 0.0).max(axis=1)
         outside = ~(np.abs(curves[case]) <= SENSIBLE * np.maximum(floor, size)[:, None])
         curves[case][np.logical_or.accumulate(outside, axis=1)] = np.nan
 
 
-def _notices(transfers: Transfers, case: int) -> tuple[str, ...]:
+def _notices(excess: Sequence[int]) -> tuple[str, ...]:
     names = ("output's answer to a command step", "output's answer to a load step", "effort")
     return tuple(
         f"The {name} begins with an impulse, which is not drawn: its transfer function has more zeros than poles."
-        for name, excess in zip(names, transfers.excess[case].tolist(), strict=True)
-        if excess > 0
+        for name, more in zip(names, excess, strict=True)
+        if more > 0
     )

@@ -1,0 +1,160 @@
+"""Responses of loops with dead time: the method of steps first, the sum over the dominant roots after it."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.loop.delayed_steps import DelayedSteps
+from engine.loop.modal import ModalSums
+from engine.loop.modal_responses import ModalResponses, late_net
+from engine.loop.response_search import Glance, IntArray, Net
+from engine.model.factored import ComplexArray, FloatArray
+
+# Instants of the net in each dead time of the method of steps.
+PER_STEP = 25
+
+
+class DelayedResponses:
+    """Stable step responses with dead time."""
+
+    def __init__(self, steps: DelayedSteps, sums: ModalSums) -> None:
+        self.steps, self.sums = steps, sums
+        self._until_s = steps.edges_s[:, -1]
+        degree = np.arange(steps.coefficients.shape[-1], dtype=np.float64)
+        size = np.abs(steps.coefficients)
+        # Over one dead time τ/θ stays below 1, so Σ|coefficient| bounds a group's polynomial, and so on for slopes.
+        self._size = size.sum(axis=-1)
+        rate = np.abs(steps.rates)[:, None, None, :]
+        theta = steps.dead_time_s[:, None, None, None]
+        first, second = (size * degree).sum(axis=-1), (size * degree * (degree - 1.0)).sum(axis=-1)
+        self._bend = self._size * rate**2 + 2.0 * first * rate / theta + second / theta**2
+        with np.errstate(all="ignore"):
+            self._pace = np.where(self._size > 0.0, np.sqrt(self._bend / self._size), 0.0)
+        self.net = self._first_net()
+        self._late = ModalResponses(sums, self.net.scale)
+
+    def _first_net(self) -> Net:
+        """The steps at even instants, each with the values just before and after its kinks, then the roots' net."""
+        cases, delays = len(self._until_s), self.steps.coefficients.shape[1]
+        late = late_net(self.sums, self._until_s)
+        times = np.empty((cases, delays * PER_STEP))
+        value = np.empty((cases, 3, delays * PER_STEP))
+        deviation, bend, turns = (np.empty((cases, 3, delays * PER_STEP)) for _ in range(3))
+        scale = late.scale.copy()
+        since = _instants_of_a_step(self.steps.edges_s)
+        for case in range(cases):
+            for step in range(delays):
+                at = slice(step * PER_STEP, (step + 1) * PER_STEP)
+                times[case, at] = self.steps.edges_s[case, step] + since[case, step]
+                value[case, :, at] = self.steps.segment(case, step, since[case, step])
+            times[case, PER_STEP - 1 :: PER_STEP] = np.nextafter(self.steps.edges_s[case, 1:], 0.0)
+        scale = np.maximum(scale, np.abs(value).max(axis=2))
+        length = np.diff(times, axis=1, append=self._until_s[:, None])
+        for step in range(delays):
+            at = slice(step * PER_STEP, (step + 1) * PER_STEP)
+            decay = np.exp(np.minimum(self.steps.rates.real[:, :, None] * since[:, step, None, :], 50.0))
+            bounds = self._bounds(np.s_[:, step], decay, length[:, at], scale)
+            deviation[:, :, at], bend[:, :, at], turns[:, :, at] = bounds
+        # Between the instants just before and just after a kink nothing is to be found.
+        for array in (deviation, bend, turns):
+            array[:, :, PER_STEP - 1 :: PER_STEP] = 0.0
+        return Net(
+            np.concatenate([times, late.time_s], axis=1),
+            np.concatenate([value, late.value], axis=2),
+            np.concatenate([deviation, late.deviation], axis=2),
+            np.concatenate([bend, late.bend], axis=2),
+            np.concatenate([turns, late.turns], axis=2),
+            scale,
+        )
+
+    def _bounds(
+        self, step: tuple[slice | int, ...], decay: FloatArray, length: FloatArray, scale: FloatArray
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """(c, 3, k) deviation, bend and turns over intervals of `length` (c, k) where groups have decayed (c, g, k)."""
+        size, bend, pace = self._size[step], self._bend[step], self._pace[step]
+        amplitude = size[:, :, :, None] * decay[:, None]
+        turn = bend[:, :, :, None] * decay[:, None] * length[:, None, None, :] ** 2
+        deviation = np.minimum(2.0 * amplitude, 0.125 * turn).sum(axis=2)
+        alive = amplitude > 1e-13 * scale[:, :, None, None]
+        fastest = np.where(alive, pace[:, :, :, None] * length[:, None, None, :], 0.0).max(axis=2, initial=0.0)
+        return deviation, np.where(alive, turn, 0.0).sum(axis=2), fastest
+
+    def glance(self, case: IntArray, row: IntArray, at_s: FloatArray, length_s: FloatArray) -> Glance:
+        """See `Responses`."""
+        early = at_s < self._until_s[case]
+        if not early.any():
+            return self._late.glance(case, row, at_s, length_s)
+        seen = [np.empty(len(at_s)) for _ in range(4)]
+        for chosen, look in ((early, self._early_glance), (~early, self._late.glance)):
+            if chosen.any():
+                part = look(case[chosen], row[chosen], at_s[chosen], length_s[chosen])
+                for array, values in zip(seen, (part.value, part.deviation, part.bend, part.turns), strict=True):
+                    array[chosen] = values
+        return Glance(*seen)
+
+    def _early_glance(self, case: IntArray, row: IntArray, at_s: FloatArray, length_s: FloatArray) -> Glance:
+        step, since = self._place(case, at_s)
+        value = self._terms(case, row, step, since, 0)[0]
+        decay = np.exp(np.minimum(self.steps.rates[case].real * since[:, None], 50.0))
+        size, turn = self._size[case, step, row] * decay, self._bend[case, step, row] * decay * length_s[:, None] ** 2
+        alive = size > 1e-13 * self.net.scale[case, row][:, None]
+        pace = np.where(alive, self._pace[case, step, row], 0.0).max(axis=1, initial=0.0)
+        return Glance(
+            value,
+            np.minimum(2.0 * size, 0.125 * turn).sum(axis=1),
+            np.where(alive, turn, 0.0).sum(axis=1),
+            pace * length_s,
+        )
+
+    def derivatives(self, case: IntArray, row: IntArray, at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """See `Responses`."""
+        early = at_s < self._until_s[case]
+        if not early.any():
+            return self._late.derivatives(case, row, at_s)
+        found = tuple(np.empty(len(at_s)) for _ in range(3))
+        step, since = self._place(case[early], at_s[early])
+        for array, values in zip(found, self._terms(case[early], row[early], step, since, 2), strict=True):
+            array[early] = values
+        if not early.all():
+            late = self._late.derivatives(case[~early], row[~early], at_s[~early])
+            for array, values in zip(found, late, strict=True):
+                array[~early] = values
+        return found[0], found[1], found[2]
+
+    def _place(self, case: IntArray, at_s: FloatArray) -> tuple[NDArray[np.int64], FloatArray]:
+        """Which dead time an instant lies in, and how long since its beginning."""
+        edges = self.steps.edges_s[case]
+        step = (at_s[:, None] >= edges[:, 1:-1]).sum(axis=1)
+        return step, at_s - edges[np.arange(len(case)), step]
+
+    def _terms(self, case: IntArray, row: IntArray, step: IntArray, since: FloatArray, order: int) -> list[FloatArray]:
+        """The value and derivatives up to `order` at (k,) instants."""
+        steps = self.steps
+        coefficients = steps.coefficients[case, step, row]
+        rates, theta = steps.rates[case], steps.dead_time_s[case][:, None]
+        degree = np.arange(coefficients.shape[-1])
+        powers = (since[:, None] / theta) ** degree
+        growth = np.exp(rates * since[:, None])
+        found = []
+        for _ in range(order + 1):
+            found.append(_summed(coefficients, powers, growth))
+            lowered = np.zeros_like(coefficients)
+            lowered[..., :-1] = coefficients[..., 1:] * degree[1:]
+            coefficients = rates[:, :, None] * coefficients + lowered / theta[:, :, None]
+        return found
+
+
+def _summed(coefficients: ComplexArray, powers: FloatArray, growth: ComplexArray) -> FloatArray:
+    polynomials = (coefficients * powers[:, None, :]).sum(axis=-1)
+    total: FloatArray = (polynomials * growth).real.sum(axis=1)
+    return total
+
+
+def _instants_of_a_step(edges_s: FloatArray) -> FloatArray:
+    """(c, j, PER_STEP) time since the step's beginning: geometric at first, then even, then just before the end."""
+    length = np.diff(edges_s, axis=1)[:, :, None]
+    geometric = np.geomspace(1e-4, 0.04, 7)
+    shares = np.concatenate([[0.0], geometric, np.linspace(0.04, 1.0, PER_STEP - 7)[1:]])
+    instants: FloatArray = length * shares
+    return instants

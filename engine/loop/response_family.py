@@ -1,0 +1,159 @@
+"""Cases whose responses are computed the same way: those without dead time, and those with it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.loop.closed_loop_roots import ClosedLoopRoots
+from engine.loop.delay_roots import DELAYS
+from engine.loop.delayed_responses import DelayedResponses
+from engine.loop.delayed_steps import DelayedSteps, delayed_steps
+from engine.loop.loop_set import LoopSet
+from engine.loop.modal import ModalSums, Transfers, modal_sums, transfers_of
+from engine.loop.modal_responses import ModalResponses, modal_net
+from engine.loop.mode_groups import with_rings
+from engine.loop.reading import Reading
+from engine.loop.response_search import Net, Responses
+from engine.loop.step_measures import step_readings
+from engine.loop.time_grid import TimeGrid
+from engine.model.factored import FloatArray
+
+# Σ|weight| over the size of the response beyond which the residues are taken to cancel.
+CANCELLING = 1e5
+STEP = np.array([1, 1, 1])
+RAMP = np.array([2, 1, 2])
+
+
+@dataclass(eq=False)
+class Family:
+    """Responses of some of the cases, all with or all without dead time."""
+
+    cases: NDArray[np.int64]
+    """Their places among all cases."""
+    transfers: Transfers
+    amplitudes: FloatArray
+    steps: ModalSums
+    """Responses to steps, from which readings come."""
+    shown: ModalSums
+    """Responses to what is shown."""
+    integrations: NDArray[np.int64]
+    """(3,) 1 for a step, 2 for a ramp: what is shown."""
+    early: DelayedSteps | None
+    """Steps over the first dead times; None without dead time."""
+    early_shown: DelayedSteps | None
+    listed: NDArray[np.bool_]
+    """(c,) whether the roots are listed; those of a loop with endlessly many unstable ones are not."""
+
+    def read(self, rows: NDArray[np.int64]) -> tuple[list[dict[str, Reading]], FloatArray]:
+        """Readings, and the sizes (k, 3) of the responses, of the stable ones among the cases."""
+        net, responses = self._stable_responses(rows)
+        readings = step_readings(net, self.steps.offset[rows], responses, self.transfers.excess[rows] > 0)
+        return readings, net.scale
+
+    def _stable_responses(self, rows: NDArray[np.int64]) -> tuple[Net, Responses]:
+        """The net and the responses of stable cases, once no residues cancel."""
+        crowded = np.zeros(len(self.cases), dtype=np.bool_)
+        crowded[rows] = ~np.isfinite(self.steps.weights[rows]).all(axis=(1, 2))
+        if not crowded.any():
+            net, responses = self._responses(rows)
+            size = self.steps.of(rows).size(self._from_s(rows))
+            crowded[rows] = np.any(size > CANCELLING * self._sure_scale(rows, net), axis=1)
+            if not crowded.any():
+                return net, responses
+        self._spread(np.flatnonzero(crowded))
+        return self._responses(rows)
+
+    def _spread(self, crowded: NDArray[np.int64]) -> None:
+        """Put rings in the place of crowds of roots."""
+        same = self.shown is self.steps
+        self.steps = with_rings(
+            self.steps, self.transfers, crowded, self.amplitudes, STEP, self._from_s(np.arange(len(self.cases)))
+        )
+        if same:
+            self.shown = self.steps
+
+    def _responses(self, rows: NDArray[np.int64]) -> tuple[Net, Responses]:
+        sums = self.steps.of(rows)
+        if self.early is None:
+            net = modal_net(sums)
+            return net, ModalResponses(sums, net.scale)
+        delayed = DelayedResponses(self.early.of(rows), sums)
+        return delayed.net, delayed
+
+    def _sure_scale(self, rows: NDArray[np.int64], net: Net) -> FloatArray:
+        """(k, 3) sizes of the responses that cancelling residues have not inflated.
+
+        Without dead time the residues come from one set of roots and cancel as they should. With dead time they do not
+        where roots crowd; the first dead times and the final value are right in any case.
+        """
+        if self.early is None:
+            return net.scale
+        until = self.early.edges_s[rows, -1]
+        early = np.where(net.time_s < until[:, None], 1.0, 0.0)
+        exact = np.max(np.abs(net.value) * early[:, None, :], axis=2)
+        sure: FloatArray = np.maximum(np.maximum(exact, np.abs(self.steps.offset[rows])), 1e-3 * net.scale)
+        return sure
+
+    def _from_s(self, rows: NDArray[np.int64]) -> FloatArray:
+        """(k,) when the sums begin to hold."""
+        return np.zeros(len(rows)) if self.early is None else self.early.edges_s[rows, -1]
+
+    def kinks_s(self) -> FloatArray:
+        """Instants at which responses may jump."""
+        return np.empty(0) if self.early is None else self.early.edges_s[:, 1:].ravel()
+
+    def sample(self, grid: TimeGrid) -> FloatArray:
+        """(c, 3, n) what is shown; values may overflow where a response grows."""
+        every = np.arange(len(self.cases))
+        with np.errstate(all="ignore"):
+            curves = self._sampled(grid)
+            from_s = self._from_s(every)
+            reach = np.nanmax(np.abs(curves), axis=2, initial=0.0)
+            crowded = np.flatnonzero(~np.all(self.shown.size(from_s) <= CANCELLING * reach, axis=1) & self.listed)
+            if len(crowded):
+                horizon = float(grid.time_s[-1])
+                self.shown = with_rings(
+                    self.shown, self.transfers, crowded, self.amplitudes, self.integrations, from_s, horizon
+                )
+                curves = self._sampled(grid)
+        return curves
+
+    def _sampled(self, grid: TimeGrid) -> FloatArray:
+        curves = self.shown.sample(grid.basis(self.shown.exponents), grid.time_s)
+        curves[~self.listed] = np.nan
+        return curves if self.early_shown is None else self.early_shown.over(curves, grid.time_s)
+
+
+def families_of(
+    loops: LoopSet, roots: ClosedLoopRoots, amplitudes: FloatArray, integrations: NDArray[np.int64]
+) -> list[Family]:
+    """The cases without dead time as one family, those with it as another."""
+    delayed = np.array([loop.dead_time_s > 0.0 for loop in loops.loops])
+    chosen = [np.flatnonzero(~delayed), np.flatnonzero(delayed)]
+    return [_family(loops, roots, cases, amplitudes, integrations) for cases in chosen if len(cases)]
+
+
+def _family(
+    loops: LoopSet,
+    roots: ClosedLoopRoots,
+    cases: NDArray[np.int64],
+    amplitudes: FloatArray,
+    integrations: NDArray[np.int64],
+) -> Family:
+    plants = tuple(loops.plants[case] for case in cases.tolist())
+    own = loops if len(cases) == loops.count else LoopSet(plants, loops.compensator)
+    mine = ClosedLoopRoots(roots.roots[cases], roots.count[cases], roots.complete[cases])
+    transfers = transfers_of(own, mine)
+    ramp = bool((integrations == 2).any())
+    steps = modal_sums(transfers, amplitudes, STEP)
+    shown = modal_sums(transfers, amplitudes, integrations) if ramp else steps
+    listed = np.ones(len(cases), dtype=np.bool_)
+    early, early_shown = None, None
+    if transfers.dead_time_s is not None:
+        early = delayed_steps(own, transfers, amplitudes, STEP, DELAYS)
+        early_shown = delayed_steps(own, transfers, amplitudes, integrations, DELAYS) if ramp else early
+        listed = np.array([roots.dominant[case] is not None for case in cases.tolist()])
+    return Family(cases, transfers, amplitudes, steps, shown, integrations, early, early_shown, listed)
