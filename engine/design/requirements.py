@@ -18,6 +18,8 @@ from engine.loop.reading import Reading, value, without_value
 
 MOST_SLACK = 20.0
 """Slack is a finite number: a ratio to an exact zero counts as this much."""
+ROUNDING_SLACK = 1e-9
+"""Slacks of two cases that differ by less differ by rounding only."""
 _LEAST_DB = -600.0
 
 
@@ -55,7 +57,18 @@ def judge(row: Requirement, readings: Sequence[Mapping[str, Reading]], stable: S
     else:
         judged = [_compare(row, measure, case[row.measure]) for case in readings]
     per_case = [_with_case(judged[index], index, stable[index]) for index in chosen]
-    return min(per_case, key=_badness)
+    return _first_of_the_worst(per_case)
+
+
+def _first_of_the_worst(per_case: Sequence[Judged]) -> Judged:
+    """The worst case; of several that agree but for rounding the first, so that its name stays while a marker moves."""
+    worst_kind, worst_room = min(_badness(judged) for judged in per_case)
+    return next(
+        judged
+        for judged in per_case
+        for kind, room in [_badness(judged)]
+        if kind == worst_kind and room <= worst_room + ROUNDING_SLACK
+    )
 
 
 def slack_of(scale: str, side: Side, found: float, limit: float) -> float:

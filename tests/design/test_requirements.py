@@ -50,6 +50,15 @@ def test_the_worst_case_is_named() -> None:
     assert judged.slack == pytest.approx(-1.4 / 30)
 
 
+def test_of_cases_that_agree_but_for_rounding_the_first_is_named() -> None:
+    row = {"measure": "peak_effort", "at_most": 4.5}
+    assert _judge(row, value(2.5), value(2.5 * (1 + 1e-13)), value(2.4)).case == 0
+    assert _judge(row, value(2.5), value(2.5 * (1 + 1e-6)), value(2.4)).case == 1
+    # A miss by the last digit stays a miss.
+    limit = _judge(row, value(4.5), value(math.nextafter(4.5, 9.0)))
+    assert (limit.met, limit.case) == (False, 1)
+
+
 def test_a_row_for_some_cases_looks_at_those_only() -> None:
     judged = _judge({"measure": "phase_margin_deg", "at_least": 45}, value(10), value(50), chosen=[1])
     assert (judged.case, judged.met) == (1, True)
