@@ -19,6 +19,7 @@ from tests.workbench_process import CLONE, WorkbenchProcess
 PICTURE = CLONE / "web" / "pictures" / "workbench.png"
 HANDLE = "lead zero"
 """What the page calls the handle that meets the landing demo."""
+OTHER_HANDLE = "lead pole"
 HELD_AT_RAD_S = 8.0
 _QUIET = ["--no-sandbox", "--no-first-run", "--disable-background-networking", "--disable-component-update"]
 
@@ -56,16 +57,14 @@ def main() -> None:
 def hold(page: Page, rad_s: float) -> None:
     """Take hold of the marker on the magnitude curve and move it to `rad_s`; it stays held."""
     handle = page.get_by_role("slider", name=HANDLE, exact=True)
-    x, y = middle(handle)
+    other = page.get_by_role("slider", name=OTHER_HANDLE, exact=True)
+    (x, y), (other_x, _) = middle(handle), middle(other)
+    # The scale is logarithmic, and two handles of known values give it.
+    per_pixel = math.log(value(other) / value(handle)) / (other_x - x)
     page.mouse.move(x, y)
     page.mouse.down()
-    # The scale is logarithmic: a trial move tells how many pixels a decade has.
-    start = value(handle)
-    page.mouse.move(x - 20, y)
-    moved = value(handle)
-    per_pixel = math.log(start / moved) / 20
-    page.mouse.move(x - math.log(start / rad_s) / per_pixel, y, steps=12)
-    page.wait_for_timeout(600)
+    page.mouse.move(x + math.log(rad_s / value(handle)) / per_pixel, y, steps=12)
+    page.wait_for_timeout(800)
 
 
 def middle(handle: Locator) -> tuple[float, float]:
