@@ -65,7 +65,7 @@ class Lane:
         """Drop what waits, and end the workers."""
         self._threads.shutdown(wait=False, cancel_futures=True)
         for worker in self._workers:
-            worker.stop()
+            worker.end()
 
 
 def _nothing() -> None:

@@ -24,6 +24,7 @@ LOG_FORMAT = "%(asctime)s %(levelname)s %(name)s: %(message)s"
 _LOG = logging.getLogger("loopwright.worker")
 _SPAWN = get_context("spawn")  # a fork would copy the server's sockets and threads
 _DONE, _FAULTS, _SURPRISE = "done", "faults", "surprise"
+_CLOSING = "the server is closing"
 
 
 class TooLongError(LoopwrightError):
@@ -37,6 +38,7 @@ class Worker:
         self._niceness = niceness
         self._process: BaseProcess | None = None
         self._line: Connection[Any, Any] | None = None
+        self._ended = False
 
     def call(self, work: Callable[..., Any], arguments: tuple[Any, ...], seconds: float) -> Any:
         """The result of `work(*arguments)`, computed in the worker.
@@ -47,6 +49,8 @@ class Worker:
         TooLongError : it took longer than `seconds`
         RefusedError : anything else went wrong
         """
+        if self._ended:
+            raise RefusedError(503, _CLOSING)
         line = self.start()
         try:
             line.send((work, arguments))
@@ -55,6 +59,8 @@ class Worker:
                 raise TooLongError(f"takes longer than {seconds:g} s to compute")
             outcome, value = line.recv()
         except (EOFError, OSError) as error:  # the process was ended from outside, for want of memory perhaps
+            if self._ended:  # by `end`, from the thread that closes the server: nothing to report
+                raise RefusedError(503, _CLOSING) from None
             self.stop()
             _LOG.error("a worker ended in the middle of its work: %r", error)
             raise RefusedError(500, SURPRISE) from None
@@ -75,6 +81,11 @@ class Worker:
         self._process.start()
         others.close()
         return self._line
+
+    def end(self) -> None:
+        """End the process for good: the server closes."""
+        self._ended = True
+        self.stop()
 
     def stop(self) -> None:
         """End the process, whatever it is doing."""
