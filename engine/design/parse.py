@@ -154,8 +154,6 @@ def _meaning(design: Design) -> list[Fault]:
             what = f"{_echo(case.name)} is already the name of plant_cases[{names[case.name]}]; names must differ"
             faults.append(Fault(f"plant_cases[{index}].name", what))
         names.setdefault(case.name, index)
-    if design.compensator.gain == 0:
-        faults.append(Fault("compensator.gain", "must not be 0"))
     limits = design.actuator
     if limits.low is not None and limits.high is not None and limits.low >= limits.high:
         faults.append(Fault("actuator.high", f"must be greater than low, {limits.low:g}, is {limits.high:g}"))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable
 from functools import lru_cache
 from typing import Any
@@ -18,6 +19,8 @@ from engine.model.factored_entry import factored_model
 from engine.model.polynomial import from_coefficients
 from engine.model.state_space import from_state_space
 
+MOST_DECADES = 60
+"""Low-frequency gains of plant and compensator stay within 1e±60, so that no product of theirs can overflow."""
 _NO_ROOTS: ComplexArray = np.empty(0, dtype=np.complex128)
 
 
@@ -85,22 +88,48 @@ def loops_of(design: doc.Design) -> LoopSet:
     return LoopSet(plants_of(design.plant_cases), compensator_of(design.compensator))
 
 
+def _in_range(model: Factored, where: str) -> Factored:
+    """The model, if its gain at low frequencies is one that products of two can be computed with."""
+    sizes = np.abs(np.concatenate([model.zeros, model.poles]))
+    signs = np.concatenate([np.ones(len(model.zeros)), -np.ones(len(model.poles))])
+    moving = sizes > 0
+    decades = math.log10(abs(model.gain)) + float(np.sum(signs[moving] * np.log10(sizes[moving])))
+    if abs(decades) > MOST_DECADES:
+        what = (
+            f"makes a low-frequency gain of 1e{decades:.0f}; it must lie between 1e-{MOST_DECADES} and 1e{MOST_DECADES}"
+        )
+        raise DesignError(where, what)
+    return model
+
+
 def check_models(plant_cases: Iterable[doc.PlantCase]) -> list[Fault]:
     """The faults that only show when the plants are factored."""
     return [
         fault
         for index, case in enumerate(plant_cases)
-        for fault in _faults(factored_of, case.model, f"plant_cases[{index}].model")
+        for fault in _faults(_plant_in_range, case.model, f"plant_cases[{index}].model")
     ]
 
 
 def check_stages(compensator: doc.Compensator) -> list[Fault]:
     """The faults that only show when the stages are factored; resting stages are held to the same."""
-    return [
+    faults = [
         fault
         for index, stage in enumerate(compensator.stages)
         for fault in _faults(stage_of, stage, f"compensator.stages[{index}]")
     ]
+    return faults or list(_faults(_compensator_in_range, compensator, "compensator"))
+
+
+@lru_cache(maxsize=512)
+def _plant_in_range(model: Any) -> Factored:
+    return _in_range(factored_of(model), "gain" if isinstance(model, doc.FactoredModel) else "")
+
+
+def _compensator_in_range(compensator: doc.Compensator) -> Factored:
+    if compensator.gain == 0:
+        raise DesignError("gain", "must not be 0")
+    return _in_range(compensator_of(compensator), "gain")
 
 
 def _faults(build: Any, part: Any, where: str) -> tuple[Fault, ...]:

@@ -118,8 +118,8 @@ ODD_LOOPS = {
     "negative plant": ({"kind": "factored", "gain": -4.0, "poles": [-1, -9]}, -5.0),
     "positive feedback": ({"kind": "factored", "gain": -4.0, "poles": [-1, -9]}, 5.0),
     "seven integrators": ({"kind": "factored", "gain": 1.0, "poles": [0] * 7}, 1.0),
-    "tiny": ({"kind": "factored", "gain": 1e-200, "poles": [-1]}, 1e-100),
-    "huge": ({"kind": "factored", "gain": 1e200, "poles": [-1]}, 1e100),
+    "tiny": ({"kind": "factored", "gain": 1e-60, "poles": [-1]}, 1e-40),
+    "huge": ({"kind": "factored", "gain": 1e60, "poles": [-1]}, 1e40),
     "fast and slow": ({"kind": "factored", "gain": 1.0, "poles": [-1e-9, -1e9]}, 1.0),
 }
 

@@ -45,6 +45,8 @@ MISTAKES = [
     ("plant_cases.0.model.poles", [0, "x"], "plant_cases[0].model.poles[1]", 'must be a number, is "x"'),
     ("plant_cases.0.model.poles", [[0, 1, 2]], "plant_cases[0].model.poles[0]", "[re, im]"),
     ("plant_cases.0.model.poles", [[0, 1]], "plant_cases[0].model.poles[0]", "conjugate"),
+    ("plant_cases.0.model.gain", 1e90, "plant_cases[0].model.gain", "between 1e-60 and 1e60"),
+    ("compensator.gain", 1e-70, "compensator.gain", "between 1e-60 and 1e60"),
     ("plant_cases.0.model.gain", 0, "plant_cases[0].model.gain", "0"),
     ("plant_cases.0.model.poles", [-1.0] * 10_000, "plant_cases[0].model.poles", "has 10000 entries, at most 60"),
     ("plant_cases.0.model", {"kind": "measured"}, "plant_cases[0].model.kind", "not supported yet"),
