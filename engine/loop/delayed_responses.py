@@ -8,11 +8,14 @@ from numpy.typing import NDArray
 from engine.loop.delayed_steps import DelayedSteps
 from engine.loop.modal import ModalSums
 from engine.loop.modal_responses import ModalResponses, late_net
-from engine.loop.response_search import Glance, IntArray, Net
-from engine.model.factored import ComplexArray, FloatArray
+from engine.loop.response_search import Follower, Glance, IntArray, Net
+from engine.model.factored import FloatArray
 
 # Instants of the net in each dead time of the method of steps.
 PER_STEP = 25
+# Where they stand, in dead times since the last kink: geometric at first, then even; the last stands for the instant
+# just before the next kink.
+SHARES = np.concatenate([[0.0], np.geomspace(1e-4, 0.04, 7), np.linspace(0.04, 1.0, PER_STEP - 7)[1:]])
 
 
 class DelayedResponses:
@@ -39,21 +42,18 @@ class DelayedResponses:
         cases, delays = len(self._until_s), self.steps.coefficients.shape[1]
         late = late_net(self.sums, self._until_s)
         times = np.empty((cases, delays * PER_STEP))
-        value = np.empty((cases, 3, delays * PER_STEP))
         deviation, bend, turns = (np.empty((cases, 3, delays * PER_STEP)) for _ in range(3))
         scale = late.scale.copy()
-        since = _instants_of_a_step(self.steps.edges_s)
-        for case in range(cases):
-            for step in range(delays):
-                at = slice(step * PER_STEP, (step + 1) * PER_STEP)
-                times[case, at] = self.steps.edges_s[case, step] + since[case, step]
-                value[case, :, at] = self.steps.segment(case, step, since[case, step])
-            times[case, PER_STEP - 1 :: PER_STEP] = np.nextafter(self.steps.edges_s[case, 1:], 0.0)
+        since = SHARES * self.steps.dead_time_s[:, None]
+        for step in range(delays):
+            times[:, step * PER_STEP : (step + 1) * PER_STEP] = self.steps.edges_s[:, step, None] + since
+        times[:, PER_STEP - 1 :: PER_STEP] = np.nextafter(self.steps.edges_s[:, 1:], 0.0)
+        value = self.steps.at_shares(SHARES)
         scale = np.maximum(scale, np.abs(value).max(axis=2))
         length = np.diff(times, axis=1, append=self._until_s[:, None])
+        decay = np.exp(np.minimum(self.steps.rates.real[:, :, None] * since[:, None, :], 50.0))
         for step in range(delays):
             at = slice(step * PER_STEP, (step + 1) * PER_STEP)
-            decay = np.exp(np.minimum(self.steps.rates.real[:, :, None] * since[:, step, None, :], 50.0))
             bounds = self._bounds(np.s_[:, step], decay, length[:, at], scale)
             deviation[:, :, at], bend[:, :, at], turns[:, :, at] = bounds
         # Between the instants just before and just after a kink nothing is to be found.
@@ -95,7 +95,10 @@ class DelayedResponses:
 
     def _early_glance(self, case: IntArray, row: IntArray, at_s: FloatArray, length_s: FloatArray) -> Glance:
         step, since = self._place(case, at_s)
-        value = self._terms(case, row, step, since, 0)[0]
+        steps = self.steps
+        powers = (since / steps.dead_time_s[case])[:, None] ** np.arange(steps.coefficients.shape[-1])
+        polynomials = (steps.coefficients[case, step, row] @ powers[:, :, None])[..., 0]
+        value = (polynomials * np.exp(steps.rates[case] * since[:, None])).real.sum(axis=1)
         decay = np.exp(np.minimum(self.steps.rates[case].real * since[:, None], 50.0))
         size, turn = self._size[case, step, row] * decay, self._bend[case, step, row] * decay * length_s[:, None] ** 2
         alive = size > 1e-13 * self.net.scale[case, row][:, None]
@@ -107,20 +110,22 @@ class DelayedResponses:
             pace * length_s,
         )
 
-    def derivatives(self, case: IntArray, row: IntArray, at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    def follow(self, case: IntArray, row: IntArray, inside_s: FloatArray) -> Follower:
         """See `Responses`."""
-        early = at_s < self._until_s[case]
+        early = inside_s < self._until_s[case]
         if not early.any():
-            return self._late.derivatives(case, row, at_s)
-        found = tuple(np.empty(len(at_s)) for _ in range(3))
-        step, since = self._place(case[early], at_s[early])
-        for array, values in zip(found, self._terms(case[early], row[early], step, since, 2), strict=True):
-            array[early] = values
-        if not early.all():
-            late = self._late.derivatives(case[~early], row[~early], at_s[~early])
-            for array, values in zip(found, late, strict=True):
-                array[~early] = values
-        return found[0], found[1], found[2]
+            return self._late.follow(case, row, inside_s)
+        step, _ = self._place(case[early], inside_s[early])
+        early_part = self._follow_step(case[early], row[early], step)
+        late_part = self._late.follow(case[~early], row[~early], inside_s[~early])
+
+        def at(at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+            found = np.empty((3, len(at_s)))
+            found[:, early] = early_part(at_s[early])
+            found[:, ~early] = late_part(at_s[~early])
+            return found[0], found[1], found[2]
+
+        return at
 
     def _place(self, case: IntArray, at_s: FloatArray) -> tuple[NDArray[np.int64], FloatArray]:
         """Which dead time an instant lies in, and how long since its beginning."""
@@ -128,33 +133,23 @@ class DelayedResponses:
         step = (at_s[:, None] >= edges[:, 1:-1]).sum(axis=1)
         return step, at_s - edges[np.arange(len(case)), step]
 
-    def _terms(self, case: IntArray, row: IntArray, step: IntArray, since: FloatArray, order: int) -> list[FloatArray]:
-        """The value and derivatives up to `order` at (k,) instants."""
+    def _follow_step(self, case: IntArray, row: IntArray, step: NDArray[np.int64]) -> Follower:
+        """Value and derivatives within one dead time each."""
         steps = self.steps
-        coefficients = steps.coefficients[case, step, row]
-        rates, theta = steps.rates[case], steps.dead_time_s[case][:, None]
-        degree = np.arange(coefficients.shape[-1])
-        powers = (since[:, None] / theta) ** degree
-        growth = np.exp(rates * since[:, None])
-        found = []
-        for _ in range(order + 1):
-            found.append(_summed(coefficients, powers, growth))
-            lowered = np.zeros_like(coefficients)
-            lowered[..., :-1] = coefficients[..., 1:] * degree[1:]
-            coefficients = rates[:, :, None] * coefficients + lowered / theta[:, :, None]
-        return found
+        rates, theta, begin = steps.rates[case], steps.dead_time_s[case], steps.edges_s[case, step]
+        orders = [steps.coefficients[case, step, row]]
+        degree = np.arange(orders[0].shape[-1])
+        for _ in range(2):
+            lowered = np.zeros_like(orders[-1])
+            lowered[..., :-1] = orders[-1][..., 1:] * degree[1:]
+            orders.append(rates[:, :, None] * orders[-1] + lowered / theta[:, None, None])
+        stacked = np.stack(orders)
 
+        def at(at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+            since = at_s - begin
+            powers = (since / theta)[:, None] ** degree
+            polynomials = (stacked @ powers[:, :, None])[..., 0]
+            found = (polynomials * np.exp(rates * since[:, None])).real.sum(axis=-1)
+            return found[0], found[1], found[2]
 
-def _summed(coefficients: ComplexArray, powers: FloatArray, growth: ComplexArray) -> FloatArray:
-    polynomials = (coefficients * powers[:, None, :]).sum(axis=-1)
-    total: FloatArray = (polynomials * growth).real.sum(axis=1)
-    return total
-
-
-def _instants_of_a_step(edges_s: FloatArray) -> FloatArray:
-    """(c, j, PER_STEP) time since the step's beginning: geometric at first, then even, then just before the end."""
-    length = np.diff(edges_s, axis=1)[:, :, None]
-    geometric = np.geomspace(1e-4, 0.04, 7)
-    shares = np.concatenate([[0.0], geometric, np.linspace(0.04, 1.0, PER_STEP - 7)[1:]])
-    instants: FloatArray = length * shares
-    return instants
+        return at

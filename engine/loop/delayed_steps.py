@@ -59,6 +59,17 @@ class DelayedSteps:
                     curves[case, :, first:last] = self.segment(case, step, since)
         return curves
 
+    def at_shares(self, shares: FloatArray) -> FloatArray:
+        """(c, 3, j·n) values at these shares (n,) of every dead time."""
+        cases, delays, rows, groups, terms = self.coefficients.shape
+        powers = shares ** np.arange(terms)[:, None]
+        flat = self.coefficients.reshape(-1, terms)
+        growth = np.exp(self.rates[:, :, None] * self.dead_time_s[:, None, None] * shares)[:, None, None]
+        real = (flat.real @ powers).reshape(cases, delays, rows, groups, -1) * growth.real
+        real -= (flat.imag @ powers).reshape(cases, delays, rows, groups, -1) * growth.imag
+        values: FloatArray = real.sum(axis=3).transpose(0, 2, 1, 3).reshape(cases, rows, -1)
+        return values
+
     def segment(self, case: int, step: int, since_s: FloatArray) -> FloatArray:
         """(3, n) values in one dead time of one case, `since_s` (n,) after its beginning."""
         powers = (since_s / self.dead_time_s[case]) ** np.arange(self.coefficients.shape[-1])[:, None]
@@ -145,20 +156,12 @@ def _steps(
     edges = theta[:, None] * np.arange(delays + 1)
     steps = DelayedSteps(theta, edges, centres / theta[:, None], series)
     with np.errstate(all="ignore"):
-        peak = np.stack([_peak(steps, case, delays) for case in range(count)])
+        peak = np.abs(steps.at_shares(np.linspace(0.0, 1.0, 5))).max(axis=2)
         share = np.where(peak > 0.0, spread * 1e-15 / peak, 0.0)
     share = np.nan_to_num(share, nan=np.inf).max(axis=1)
     # Circles that reach far to the right drown the response, and with it the peak just taken.
     reach = np.where(radii > 0.0, centres.real + radii, 0.0).max(axis=1) * (delays - 1)
     return steps, np.where(reach > MOST_GROWTH, np.exp(np.minimum(reach, 600.0)) * share, share)
-
-
-def _peak(steps: DelayedSteps, case: int, delays: int) -> FloatArray:
-    """(3,) size of each response over the first dead times, from a few instants."""
-    since = steps.dead_time_s[case] * np.linspace(0.0, 1.0, 5)
-    sizes = [np.abs(steps.segment(case, step, since)).max(axis=1) for step in range(delays)]
-    largest: FloatArray = np.max(sizes, axis=0)
-    return largest
 
 
 def _round_trips(

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.loop_set import LoopSet
-from engine.loop.packed import RootTable, root_table, time_scales
+from engine.loop.packed import RootTable, packed_models, time_scales
 from engine.model.factored import ComplexArray, FloatArray
 
 COMMAND, LOAD, EFFORT = 0, 1, 2
@@ -56,9 +56,10 @@ class ModalSums:
     def sample(self, basis: ComplexArray, time_s: FloatArray) -> FloatArray:
         """(c, 3, n) values at `time_s` (n,), where `basis` (c, m, n) is e^{exponent·time}."""
         real = np.concatenate([self.weights.real, -self.weights.imag], axis=2)
-        parts = np.concatenate([basis.real, basis.imag], axis=1)
-        steady = self.offset[:, :, None] + self.slope[:, :, None] * time_s
-        summed: FloatArray = real @ parts + steady
+        summed: FloatArray = real @ np.concatenate([basis.real, basis.imag], axis=1)
+        summed += self.offset[:, :, None]
+        if self.slope.any():
+            summed += self.slope[:, :, None] * time_s
         return summed
 
 
@@ -128,29 +129,25 @@ class Transfers:
 def transfers_of(loops: LoopSet, roots: ClosedLoopRoots) -> Transfers:
     """Transfer functions of loops all without, or all with dead time, from their parts and closed-loop roots."""
     scale = time_scales(loops.loops)
-    plants, compensator = loops.plants, loops.compensator
-    parts = tuple(
-        root_table(lists).scaled(scale)
-        for lists in (
-            [compensator.zeros] * loops.count,
-            [compensator.poles] * loops.count,
-            [plant.zeros for plant in plants],
-            [plant.poles for plant in plants],
-        )
+    plants, compensator = packed_models(loops.plants), packed_models((loops.compensator,))
+    parts = (
+        compensator.zeros.scaled(scale),
+        compensator.poles.scaled(scale),
+        plants.zeros.scaled(scale),
+        plants.poles.scaled(scale),
     )
-    zeros_c, poles_c = len(compensator.zeros), len(compensator.poles)
-    counts = np.array([(len(plant.zeros), len(plant.poles)) for plant in plants])
-    zeros_p, poles_p = counts[:, 0], counts[:, 1]
-    gain_p = np.array([plant.gain for plant in plants]) * scale ** (zeros_p - poles_p).astype(np.float64)
+    zeros_c, poles_c = compensator.counts[:, 0]
+    zeros_p, poles_p = plants.counts
+    gain_p = plants.gain * scale ** (zeros_p - poles_p).astype(np.float64)
     gain_c = compensator.gain * scale ** float(zeros_c - poles_c)
     live = np.arange(roots.roots.shape[1]) < roots.count[:, None]
     scaled_roots = roots.roots / scale[:, None]
-    dead_time_s = np.array([loop.dead_time_s for loop in loops.loops])
+    dead_time_s = plants.dead_time_s
     orders = np.maximum(zeros_c + zeros_p, poles_c + poles_p) if dead_time_s.any() else roots.count
     transfers = Transfers(
         scale,
-        np.stack([gain_c * gain_p, gain_p, np.broadcast_to(gain_c, scale.shape)], axis=1),
-        (parts[0], parts[1], parts[2], parts[3]),
+        np.stack([gain_c * gain_p, gain_p, gain_c], axis=1),
+        parts,
         scaled_roots,
         live,
         np.stack([zeros_c + zeros_p, zeros_p + poles_c, zeros_c + poles_p], axis=1) - orders[:, None],

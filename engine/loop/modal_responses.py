@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from engine.loop.modal import ModalSums
-from engine.loop.response_search import Glance, IntArray, Net
+from engine.loop.response_search import Follower, Glance, IntArray, Net
 from engine.model.factored import ComplexArray, FloatArray
 
 NET_INSTANTS = 160
@@ -33,14 +33,18 @@ class ModalResponses:
         value = self._offset[case, row] + np.add.reduce(terms.real, axis=0)
         return Glance(value, *_bounds(np.abs(terms), np.abs(exponents) * length_s, self._scale[case, row]))
 
-    def derivatives(self, case: IntArray, row: IntArray, at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    def follow(self, case: IntArray, row: IntArray, inside_s: FloatArray) -> Follower:
         """See `Responses`."""
-        exponents = self._exponents[:, case]
-        terms = self._weights[:, case, row] * np.exp(exponents * at_s)
-        first = terms * exponents
-        second = first * exponents
-        value = self._offset[case, row] + np.add.reduce(terms.real, axis=0)
-        return value, np.add.reduce(first.real, axis=0), np.add.reduce(second.real, axis=0)
+        exponents, offset = self._exponents[:, case], self._offset[case, row]
+        weights = self._weights[:, case, row]
+        first = weights * exponents
+        stacked = np.stack([weights, first, first * exponents], axis=1)
+
+        def at(at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+            summed = np.add.reduce(stacked * np.exp(exponents * at_s)[:, None, :], axis=0).real
+            return offset + summed[0], summed[1], summed[2]
+
+        return at
 
 
 def _bounds(size: FloatArray, turn: FloatArray, scale: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
@@ -80,12 +84,12 @@ def _values(sums: ModalSums, basis: ComplexArray) -> FloatArray:
 
 
 def _fastest_alive(size: FloatArray, decay: FloatArray, turn: FloatArray, scale: FloatArray) -> FloatArray:
-    """(c, 3, k) h·|λ| of the fastest mode that is alive."""
-    turns = np.zeros((*scale.shape, decay.shape[2]))
-    for row in range(scale.shape[1]):
-        alive = size[:, row, :, None] * decay > ASLEEP * scale[:, row, None, None]
-        turns[:, row] = np.max(turn * alive, axis=1, initial=0.0)
-    return turns
+    """(c, 3, k) h·|λ| of the fastest mode that is alive in any row."""
+    with np.errstate(all="ignore"):
+        share = np.where(scale[:, :, None] > 0.0, size / scale[:, :, None], 0.0).max(axis=1)
+    alive = share[:, :, None] * decay > ASLEEP
+    turns = np.max(turn * alive, axis=1, initial=0.0)
+    return np.broadcast_to(turns[:, None, :], (*scale.shape, turns.shape[1]))
 
 
 def _net_instants(sums: ModalSums, from_s: FloatArray) -> FloatArray:

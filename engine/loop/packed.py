@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,9 +52,38 @@ def time_scales(models: Sequence[Factored]) -> FloatArray:
 
     Dividing by a power of two is exact, and keeps products over 40 roots inside the range of a double.
     """
-    exponents = []
-    for model in models:
-        sizes = np.abs(np.concatenate([model.zeros, model.poles]))
-        sizes = sizes[sizes > 0.0]
-        exponents.append(np.round(np.log2(sizes).mean()) if len(sizes) else 0.0)
-    return 2.0 ** np.array(exponents, dtype=np.float64)
+    lists = [roots for model in models for roots in (model.zeros, model.poles)]
+    if not lists:
+        return np.ones(0)
+    sizes = np.abs(np.concatenate(lists))
+    counts = [len(model.zeros) + len(model.poles) for model in models]
+    case = np.repeat(np.arange(len(models)), counts)
+    moving = sizes > 0.0
+    logs = np.log2(np.where(moving, sizes, 1.0))
+    total = np.bincount(case, logs, len(models))
+    number = np.bincount(case, moving, len(models))
+    return 2.0 ** np.round(total / np.maximum(number, 1.0))
+
+
+@dataclass(frozen=True, eq=False)
+class PackedModels:
+    """Several models as arrays."""
+
+    zeros: RootTable
+    poles: RootTable
+    counts: NDArray[np.int64]
+    """(2, c) numbers of zeros and poles."""
+    gain: FloatArray
+    dead_time_s: FloatArray
+
+
+@lru_cache(maxsize=16)
+def packed_models(models: tuple[Factored, ...]) -> PackedModels:
+    """The models as arrays; told by identity, as plants stay the same objects while a compensator is moved."""
+    return PackedModels(
+        root_table([model.zeros for model in models]),
+        root_table([model.poles for model in models]),
+        np.array([[len(model.zeros) for model in models], [len(model.poles) for model in models]], dtype=np.int64),
+        np.array([model.gain for model in models]),
+        np.array([model.dead_time_s for model in models]),
+    )

@@ -46,10 +46,13 @@ class Family:
     early_shown: DelayedSteps | None
     listed: NDArray[np.bool_]
     """(c,) whether the roots are listed; those of a loop with endlessly many unstable ones are not."""
+    verified: NDArray[np.bool_]
+    """(c,) whether the residues of what is shown are known not to cancel."""
 
     def read(self, rows: NDArray[np.int64]) -> tuple[list[dict[str, Reading]], FloatArray]:
         """Readings, and the sizes (k, 3) of the responses, of the stable ones among the cases."""
         net, responses = self._stable_responses(rows)
+        self.verified[rows] = self.shown is self.steps
         readings = step_readings(net, self.steps.offset[rows], responses, self.transfers.excess[rows] > 0)
         return readings, net.scale
 
@@ -105,14 +108,19 @@ class Family:
         """Instants at which responses may jump."""
         return np.empty(0) if self.early is None else self.early.edges_s[:, 1:].ravel()
 
-    def sample(self, grid: TimeGrid) -> FloatArray:
-        """(c, 3, n) what is shown; values may overflow where a response grows."""
-        every = np.arange(len(self.cases))
+    def sample(self, grid: TimeGrid, closely: bool) -> FloatArray:
+        """(c, 3, n) what is shown; values may overflow where a response grows.
+
+        `closely`: to full accuracy of what lies within the horizon, even if that is far from the response's peak.
+        """
         with np.errstate(all="ignore"):
             curves = self._sampled(grid)
-            from_s = self._from_s(every)
+            if self.verified.all() and not closely:
+                return curves
+            from_s = self._from_s(np.arange(len(self.cases)))
             reach = np.nanmax(np.abs(curves), axis=2, initial=0.0)
-            crowded = np.flatnonzero(~np.all(self.shown.size(from_s) <= CANCELLING * reach, axis=1) & self.listed)
+            cancelling = ~np.all(self.shown.size(from_s) <= CANCELLING * reach, axis=1)
+            crowded = np.flatnonzero(cancelling & self.listed & (closely | ~self.verified))
             if len(crowded):
                 horizon = float(grid.time_s[-1])
                 self.shown = with_rings(
@@ -122,8 +130,9 @@ class Family:
         return curves
 
     def _sampled(self, grid: TimeGrid) -> FloatArray:
-        curves = self.shown.sample(grid.basis(self.shown.exponents), grid.time_s)
-        curves[~self.listed] = np.nan
+        curves = self.shown.sample(grid.basis(self.shown.exponents), grid.joined_s)[:, :, grid.order]
+        if not self.listed.all():
+            curves[~self.listed] = np.nan
         return curves if self.early_shown is None else self.early_shown.over(curves, grid.time_s)
 
 
@@ -156,4 +165,15 @@ def _family(
         early = delayed_steps(own, transfers, amplitudes, STEP, DELAYS)
         early_shown = delayed_steps(own, transfers, amplitudes, integrations, DELAYS) if ramp else early
         listed = np.array([roots.dominant[case] is not None for case in cases.tolist()])
-    return Family(cases, transfers, amplitudes, steps, shown, integrations, early, early_shown, listed)
+    return Family(
+        cases,
+        transfers,
+        amplitudes,
+        steps,
+        shown,
+        integrations,
+        early,
+        early_shown,
+        listed,
+        np.zeros(len(cases), dtype=np.bool_),
+    )

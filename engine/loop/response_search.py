@@ -9,6 +9,7 @@ the net steps over is therefore looked at exactly where it can matter, and nowhe
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Protocol, TypeAlias
 
@@ -23,6 +24,8 @@ BoolArray: TypeAlias = NDArray[np.bool_]
 GREATEST, LAST_OUTSIDE, FIRST_REACHED = 0, 1, 2
 SPLIT = 8
 MOST_ROUNDS = 14
+# Newton's steps in an arc; one that has not settled by then goes back and forth between its ends.
+ARC_STEPS = 6
 MOST_INTERVALS = 40_000
 # Below this share of the response's scale a difference is rounding.
 NEGLIGIBLE = 1e-12
@@ -41,6 +44,9 @@ class Glance:
     """h·|λ| of the fastest mode that is still alive."""
 
 
+Follower: TypeAlias = Callable[[FloatArray], tuple[FloatArray, FloatArray, FloatArray]]
+
+
 class Responses(Protocol):
     """What the search needs to know of responses; k points are flat arrays of case, row and time."""
 
@@ -48,8 +54,8 @@ class Responses(Protocol):
         """Values at (k,) instants and bounds over the intervals that begin there."""
         ...
 
-    def derivatives(self, case: IntArray, row: IntArray, at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
-        """y, y′ and y″ at (k,) instants."""
+    def follow(self, case: IntArray, row: IntArray, inside_s: FloatArray) -> Follower:
+        """A function that gives y, y′ and y″ at (k,) instants, each in the smooth piece that holds `inside_s`."""
         ...
 
 
@@ -94,21 +100,17 @@ class Tasks:
 
 @dataclass(eq=False)
 class _Intervals:
+    """Intervals that may hold what their tasks look for."""
+
     task: IntArray
-    start: FloatArray
-    length: FloatArray
-    left: FloatArray
-    right: FloatArray
-    deviation: FloatArray
-    bend: FloatArray
-    turns: FloatArray
+    table: FloatArray
+    """(7, k): start, length, g at both ends, then deviation, bend and turns as in `Glance`."""
 
     def only(self, keep: BoolArray) -> _Intervals:
-        return _Intervals(*(getattr(self, name)[keep] for name in self.__dataclass_fields__))
+        return _Intervals(self.task[keep], self.table[:, keep])
 
     def beside(self, other: _Intervals) -> _Intervals:
-        pairs = ((getattr(self, name), getattr(other, name)) for name in self.__dataclass_fields__)
-        return _Intervals(*(np.concatenate(pair) for pair in pairs))
+        return _Intervals(np.concatenate([self.task, other.task]), np.concatenate([self.table, other.table], axis=1))
 
 
 @dataclass(eq=False)
@@ -127,7 +129,8 @@ def search(tasks: Tasks, net: Net, responses: Responses) -> Findings:
         unfinished = state.unfinished(intervals)
         if not unfinished.any() or np.count_nonzero(unfinished) * SPLIT > MOST_INTERVALS:
             break
-        intervals = state.pruned(intervals.only(~unfinished).beside(state.split(intervals.only(unfinished))))
+        parts = state.split(intervals if unfinished.all() else intervals.only(unfinished))
+        intervals = state.pruned(parts if unfinished.all() else intervals.only(~unfinished).beside(parts))
     return state.polished(intervals)
 
 
@@ -166,16 +169,9 @@ class _Search:
         task, k = np.nonzero(self._possible(all_tasks[:, None], times[:, :-1], times[:, 1:], upper))
         case, row = tasks.case[task], tasks.row[task]
         start = times[task, k]
-        return _Intervals(
-            task,
-            start,
-            times[task, k + 1] - start,
-            g[task, k],
-            g[task, k + 1],
-            deviation[task, k],
-            net.bend[case, row, k],
-            net.turns[case, row, k],
-        )
+        length = times[task, k + 1] - start
+        bounds = deviation[task, k], net.bend[case, row, k], net.turns[case, row, k]
+        return _Intervals(task, np.stack([start, length, g[task, k], g[task, k + 1], *bounds]))
 
     def _possible(self, task: IntArray, start: FloatArray, end: FloatArray, upper: FloatArray) -> BoolArray:
         """Whether an interval may still hold what its task looks for."""
@@ -188,15 +184,13 @@ class _Search:
     def unfinished(self, intervals: _Intervals) -> BoolArray:
         """(k,) intervals to split: all those of a task that is not down to arcs it can polish."""
         task = intervals.task
-        # Stationary points: one arc holds at most one where no living mode turns far.
-        arc = intervals.turns <= 0.5
-        # Crossings: the slope keeps its sign, and the ends lie on both sides.
-        drop = np.where(self.last[task], intervals.left - intervals.right, intervals.right - intervals.left)
+        start, length, left, right, _, bend, turns = intervals.table
+        # Crossings: the slope keeps its sign, and the ends lie on both sides. Stationary points: one arc holds at most
+        # one where no living mode turns far.
         level = self.tasks.level[task]
-        low, high = np.minimum(intervals.left, intervals.right), np.maximum(intervals.left, intervals.right)
-        bracket = (drop > intervals.bend) & (low < level) & (high >= level)
-        tiny = intervals.length <= 4e-16 * (intervals.start + intervals.length)
-        ready = np.where(self.greatest[task], arc, bracket) | tiny
+        bracket = (np.abs(right - left) > bend) & ((left >= level) != (right >= level))
+        tiny = length <= 4e-16 * (start + length)
+        ready = np.where(self.greatest[task], turns <= 0.5, bracket) | tiny
         waiting = np.zeros(len(self.scale), dtype=np.bool_)
         waiting[task[~ready]] = True
         unfinished: BoolArray = waiting[task] & ~tiny
@@ -206,15 +200,17 @@ class _Search:
         """Each interval in SPLIT parts; the running bounds take in the new values."""
         tasks = self.tasks
         task = np.repeat(intervals.task, SPLIT)
-        length = np.repeat(intervals.length / SPLIT, SPLIT)
         count = len(intervals.task)
-        start = (intervals.start[:, None] + np.arange(SPLIT) * (intervals.length / SPLIT)[:, None]).ravel()
+        first, whole, left, right = intervals.table[:4]
+        length = np.repeat(whole / SPLIT, SPLIT)
+        start = (first[:, None] + np.arange(SPLIT) * (whole / SPLIT)[:, None]).ravel()
         seen = self.responses.glance(tasks.case[task], tasks.row[task], start, length)
-        left = tasks.measure(task, seen.value).reshape(count, SPLIT)
-        left[:, 0] = intervals.left
-        right = np.concatenate([left[:, 1:], intervals.right[:, None]], axis=1)
-        self.take_in(task, start, left.ravel())
-        return _Intervals(task, start, length, left.ravel(), right.ravel(), seen.deviation, seen.bend, seen.turns)
+        ends = np.empty((count, SPLIT + 1))
+        ends[:, :-1] = tasks.measure(task, seen.value).reshape(count, SPLIT)
+        ends[:, 0], ends[:, -1] = left, right
+        begin, end = ends[:, :-1].ravel(), ends[:, 1:].ravel()
+        self.take_in(task, start, begin)
+        return _Intervals(task, np.stack([start, length, begin, end, seen.deviation, seen.bend, seen.turns]))
 
     def take_in(self, task: IntArray, at_s: FloatArray, g: FloatArray) -> None:
         """Update the running bounds by values g of tasks at instants."""
@@ -232,65 +228,56 @@ class _Search:
 
     def pruned(self, intervals: _Intervals) -> _Intervals:
         """Without the intervals that the bounds rule out by now."""
-        upper = np.maximum(intervals.left, intervals.right) + intervals.deviation
-        end = intervals.start + intervals.length
+        start, length, left, right, deviation, _, _ = intervals.table
+        end = start + length
         # The ends of split intervals differ from the neighbours' starts by rounding.
         slack = 1e-14 * end
-        return intervals.only(self._possible(intervals.task, intervals.start + slack, end - slack, upper))
+        upper = np.maximum(left, right) + deviation
+        return intervals.only(self._possible(intervals.task, start + slack, end - slack, upper))
 
     def polished(self, intervals: _Intervals) -> Findings:
         """The final values and instants."""
-        greatest = self.greatest[intervals.task]
-        self._polish_extrema(intervals.only(greatest))
-        at = np.where(self.greatest, self.best_at, np.where(self.last, self.outside_until, self.reached_at))
         level = self.tasks.level[intervals.task]
-        across = (intervals.left >= level) != (intervals.right >= level)
-        crossings = intervals.only(~greatest & across)
-        if len(crossings.task):
-            crossed = self._crossings(crossings)
-            last, first = self.last[crossings.task], self.first[crossings.task]
-            np.maximum.at(at, crossings.task[last], crossed[last])
-            at[crossings.task[first]] = np.inf
-            np.minimum.at(at, crossings.task[first], crossed[first])
+        across = (intervals.table[2] >= level) != (intervals.table[3] >= level)
+        chosen = intervals.only(self.greatest[intervals.task] | across)
+        at = np.where(self.last, self.outside_until, self.reached_at)
+        if len(chosen.task):
+            found, y = self._newton(chosen)
+            arcs = self.greatest[chosen.task]
+            self.take_in(chosen.task[arcs], found[arcs], self.tasks.measure(chosen.task, y)[arcs])
+            last, first = self.last[chosen.task], self.first[chosen.task]
+            np.maximum.at(at, chosen.task[last], found[last])
+            at[chosen.task[first]] = np.inf
+            np.minimum.at(at, chosen.task[first], found[first])
+        at = np.where(self.greatest, self.best_at, at)
         value = np.where(self.greatest, self.best, self.tasks.level)
         none = self.last & (self.outside_until < 0.0)
         return Findings(np.where(none, 0.0, value), np.where(none, 0.0, at))
 
-    def _polish_extrema(self, arcs: _Intervals) -> None:
-        if not len(arcs.task):
-            return
-        case, row = self.tasks.case[arcs.task], self.tasks.row[arcs.task]
-        low, high = arcs.start, arcs.start + arcs.length
-        at = 0.5 * (low + high)
-        for _ in range(6):
-            _, slope, curvature = self.responses.derivatives(case, row, at)
-            with np.errstate(all="ignore"):
-                move = np.where(curvature == 0.0, 0.0, slope / curvature)
-            # Away from a maximum Newton's step goes the wrong way: go up instead, as far as the arc goes.
-            previous, at = at, np.clip(at - move, low, high)
-            if np.all(np.abs(at - previous) <= 1e-9 * arcs.length):
-                break
-        y, _, _ = self.responses.derivatives(case, row, at)
-        self.take_in(arcs.task, at, self.tasks.measure(arcs.task, y))
-
-    def _crossings(self, brackets: _Intervals) -> FloatArray:
-        """Newton's method on g = level inside each bracket, halving where it would leave it."""
-        task, tasks = brackets.task, self.tasks
-        case, row, sign, level = tasks.case[task], tasks.row[task], tasks.sign[task], tasks.level[task]
-        low, high = brackets.start.copy(), brackets.start + brackets.length
-        rising = brackets.right >= level
-        t = low + brackets.length * np.clip((level - brackets.left) / (brackets.right - brackets.left), 0.0, 1.0)
-        for _ in range(60):
-            y, slope, _ = self.responses.derivatives(case, row, t)
-            side = np.where(sign == 0.0, np.where(y >= tasks.reference[task], 1.0, -1.0), sign)
-            gap = tasks.measure(task, y) - level
-            beyond = (gap >= 0.0) == rising
-            low, high = np.where(beyond, low, t), np.where(beyond, t, high)
-            with np.errstate(all="ignore"):
-                step = t - gap / (side * slope)
-            ahead = np.where((step >= low) & (step <= high), step, 0.5 * (low + high))
-            done = (np.abs(ahead - t) <= 1e-15 * t) | (np.abs(gap) <= 1e-15 * self.scale[task])
-            t = np.where(done, t, ahead)
-            if done.all():
-                break
-        return t
+    def _newton(self, pieces: _Intervals) -> tuple[FloatArray, FloatArray]:
+        """Newton's method in every piece together: on y′ = 0 in arcs, on g = level in brackets; (k,) instants and y."""
+        task, tasks = pieces.task, self.tasks
+        start, length, left, right = pieces.table[:4]
+        sign, level, arc = tasks.sign[task], tasks.level[task], self.greatest[task]
+        reference, enough = tasks.reference[task], 1e-15 * self.scale[task]
+        follow = self.responses.follow(tasks.case[task], tasks.row[task], start + 0.5 * length)
+        low, high, rising = start.copy(), start + length, right >= level
+        with np.errstate(all="ignore"):
+            t = low + length * np.where(arc, 0.5, np.clip((level - left) / (right - left), 0.0, 1.0))
+            for turn in range(60):
+                y, slope, curvature = follow(t)
+                side = np.where(sign == 0.0, np.where(y >= reference, 1.0, -1.0), sign)
+                gap = np.where(sign == 0.0, np.abs(y - reference), sign * y) - level
+                beyond = (gap >= 0.0) == rising
+                low, high = np.where(arc | beyond, low, t), np.where(arc | ~beyond, high, t)
+                move = np.where(arc, slope / curvature, gap / (side * slope))
+                step = t - np.where(np.isfinite(move), move, 0.0)
+                outside = np.where((step >= low) & (step <= high), step, 0.5 * (low + high))
+                # An arc without a stationary point has its greatest value at an end.
+                ahead = np.where(arc, np.clip(step, low, high), outside)
+                close = np.where(arc, 1e-5 * length, 1e-15 * t)
+                done = (np.abs(ahead - t) <= close) | np.where(arc, turn >= ARC_STEPS, np.abs(gap) <= enough)
+                t = np.where(done & ~arc, t, ahead)
+                if done.all():
+                    break
+        return t, follow(t)[0]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,8 +14,9 @@ from engine.model.factored import ComplexArray, FloatArray
 # comb times a fine one, so that its exponentials are products of few.
 GEOMETRIC = 112
 COARSE, FINE = 18, 16
+SHARES = np.linspace(0.0, 1.0, GEOMETRIC)
 EARLIEST = 1e-7
-STEPS = np.array([1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0, 10.0])
+STEPS = (1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0, 10.0)
 
 
 @dataclass(frozen=True, eq=False)
@@ -25,17 +27,19 @@ class TimeGrid:
     """(n,) increasing, from 0 (which stands for the instant just after the step)."""
     order: NDArray[np.int64]
     """(n,) positions that put [geometric, uniform] in order."""
+    joined_s: FloatArray
+    """(n,) [geometric, uniform] as they stand, the order of `basis`."""
     geometric_s: FloatArray
     coarse_s: FloatArray
     fine_s: FloatArray
 
     def basis(self, exponents: ComplexArray) -> ComplexArray:
-        """(c, m, n) e^{exponent·time}; growth is cut off at e^500, far beyond what is shown."""
+        """(c, m, n) e^{exponent·time} at `joined_s`; growth is cut off far beyond what is shown."""
         geometric = _exponential(exponents, self.geometric_s)
         coarse, fine = _exponential(exponents, self.coarse_s), _exponential(exponents, self.fine_s)
         uniform = coarse[:, :, :, None] * fine[:, :, None, :]
         flat = uniform.reshape(*exponents.shape, len(self.coarse_s) * len(self.fine_s))
-        merged: ComplexArray = np.concatenate([geometric, flat], axis=2)[:, :, self.order]
+        merged: ComplexArray = np.concatenate([geometric, flat], axis=2)
         return merged
 
 
@@ -57,18 +61,19 @@ def time_grid(horizon_s: float, earliest_s: float, kinks_s: FloatArray) -> TimeG
     """
     first = min(max(earliest_s, EARLIEST * horizon_s), 0.01 * horizon_s)
     step = horizon_s / (COARSE * FINE - 1)
-    geometric = np.geomspace(first, horizon_s - 0.5 * step, GEOMETRIC)
-    kinks = np.unique(kinks_s[kinks_s < horizon_s])
-    geometric = np.concatenate([geometric, np.nextafter(kinks, 0.0), kinks])
+    geometric = first * ((horizon_s - 0.5 * step) / first) ** SHARES
+    if len(kinks_s):
+        kinks = np.unique(kinks_s[kinks_s < horizon_s])
+        geometric = np.concatenate([geometric, np.nextafter(kinks, 0.0), kinks])
     coarse: FloatArray = np.arange(float(COARSE)) * (FINE * step)
     fine: FloatArray = np.arange(float(FINE)) * step
     uniform = (coarse[:, None] + fine).ravel()
     joined = np.concatenate([geometric, uniform])
     order = np.argsort(joined, kind="stable").astype(np.int64)
-    return TimeGrid(joined[order], order, geometric, coarse, fine)
+    return TimeGrid(joined[order], order, joined, geometric, coarse, fine)
 
 
 def round_horizon(horizon_s: float) -> float:
     """The next round number at or above: a horizon that crept with every move would make the axis restless."""
-    decade = 10.0 ** np.floor(np.log10(horizon_s))
-    return float(decade * STEPS[np.searchsorted(STEPS, horizon_s / decade * (1.0 - 1e-9))])
+    decade = 10.0 ** math.floor(math.log10(horizon_s))
+    return decade * next(step for step in STEPS if step >= horizon_s / decade * (1.0 - 1e-9))

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from statistics import median
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -76,7 +77,7 @@ def read_time(loops: LoopSet, view: FrequencyView, scenario: Scenario) -> TimeVi
     stable = np.array([case.stable for case in view.cases]) & ~np.any(view.roots.roots.real >= 0.0, axis=1)
     readings, sizes = _readings(families, stable, view)
     horizon = scenario.horizon_s or _horizon(readings, view, stable, loops)
-    curves, time_s = _curves(families, horizon, loops.count)
+    curves, time_s = _curves(families, horizon, loops.count, scenario.horizon_s is not None)
     if not stable.all():
         _cut_off(curves, time_s, view, scenario, stable, sizes)
     excess = np.empty((loops.count, 3), dtype=np.int64)
@@ -118,7 +119,7 @@ def _horizon(
     if not spans:
         spans = [_own_span(view, case, loops.loops[case].dead_time_s) for case in range(len(stable))]
     # One case that hardly settles must not squeeze the others into a corner.
-    return round_horizon(1.25 * min(max(spans), 5.0 * float(np.median(spans))))
+    return round_horizon(1.25 * min(max(spans), 5.0 * median(spans)))
 
 
 def _own_span(view: FrequencyView, case: int, dead_time_s: float) -> float:
@@ -133,13 +134,13 @@ def _own_span(view: FrequencyView, case: int, dead_time_s: float) -> float:
     return float(40.0 / np.abs(moving).min())
 
 
-def _curves(families: Sequence[Family], horizon: float, count: int) -> tuple[FloatArray, FloatArray]:
+def _curves(families: Sequence[Family], horizon: float, count: int, closely: bool) -> tuple[FloatArray, FloatArray]:
     """(c, 3, n) responses and (n,) instants [s]."""
     quickest = min(family.shown.quickest_s() for family in families)
     grid = time_grid(horizon, 0.05 * quickest, np.concatenate([family.kinks_s() for family in families]))
     curves = np.empty((count, 3, len(grid.time_s)))
     for family in families:
-        curves[family.cases] = family.sample(grid)
+        curves[family.cases] = family.sample(grid, closely)
     return curves, grid.time_s
 
 
