@@ -32,6 +32,7 @@ class DelayedResponses:
         theta = steps.dead_time_s[:, None, None, None]
         first, second = (size * degree).sum(axis=-1), (size * degree * (degree - 1.0)).sum(axis=-1)
         self._bend = self._size * rate**2 + 2.0 * first * rate / theta + second / theta**2
+        self._fourth = (size * (rate[..., None] + degree / theta[..., None]) ** 4).sum(axis=-1)
         with np.errstate(all="ignore"):
             self._pace = np.where(self._size > 0.0, np.sqrt(self._bend / self._size), 0.0)
         self.net = self._first_net()
@@ -42,27 +43,29 @@ class DelayedResponses:
         cases, delays = len(self._until_s), self.steps.coefficients.shape[1]
         late = late_net(self.sums, self._until_s)
         times = np.empty((cases, delays * PER_STEP))
-        deviation, bend, turns = (np.empty((cases, 3, delays * PER_STEP)) for _ in range(3))
+        deviation, cubic, bend, turns = (np.empty((cases, 3, delays * PER_STEP)) for _ in range(4))
         scale = late.scale.copy()
         since = SHARES * self.steps.dead_time_s[:, None]
         for step in range(delays):
             times[:, step * PER_STEP : (step + 1) * PER_STEP] = self.steps.edges_s[:, step, None] + since
         times[:, PER_STEP - 1 :: PER_STEP] = np.nextafter(self.steps.edges_s[:, 1:], 0.0)
-        value = self.steps.at_shares(SHARES)
+        value, slope = self.steps.at_shares(SHARES), self.steps.slopes().at_shares(SHARES)
         scale = np.maximum(scale, np.abs(value).max(axis=2))
         length = np.diff(times, axis=1, append=self._until_s[:, None])
         decay = np.exp(np.minimum(self.steps.rates.real[:, :, None] * since[:, None, :], 50.0))
         for step in range(delays):
             at = slice(step * PER_STEP, (step + 1) * PER_STEP)
             bounds = self._bounds(np.s_[:, step], decay, length[:, at], scale)
-            deviation[:, :, at], bend[:, :, at], turns[:, :, at] = bounds
+            deviation[:, :, at], cubic[:, :, at], bend[:, :, at], turns[:, :, at] = bounds
         # Between the instants just before and just after a kink nothing is to be found.
-        for array in (deviation, bend, turns):
+        for array in (deviation, cubic, bend, turns):
             array[:, :, PER_STEP - 1 :: PER_STEP] = 0.0
         return Net(
             np.concatenate([times, late.time_s], axis=1),
             np.concatenate([value, late.value], axis=2),
+            np.concatenate([slope, late.slope], axis=2),
             np.concatenate([deviation, late.deviation], axis=2),
+            np.concatenate([cubic, late.cubic_deviation], axis=2),
             np.concatenate([bend, late.bend], axis=2),
             np.concatenate([turns, late.turns], axis=2),
             scale,
@@ -70,15 +73,16 @@ class DelayedResponses:
 
     def _bounds(
         self, step: tuple[slice | int, ...], decay: FloatArray, length: FloatArray, scale: FloatArray
-    ) -> tuple[FloatArray, FloatArray, FloatArray]:
-        """(c, 3, k) deviation, bend and turns over intervals of `length` (c, k) where groups have decayed (c, g, k)."""
+    ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+        """(c, 3, k) bounds as in `Net` over intervals of `length` (c, k), where groups have decayed by (c, g, k)."""
         size, bend, pace = self._size[step], self._bend[step], self._pace[step]
         amplitude = size[:, :, :, None] * decay[:, None]
         turn = bend[:, :, :, None] * decay[:, None] * length[:, None, None, :] ** 2
         deviation = np.minimum(2.0 * amplitude, 0.125 * turn).sum(axis=2)
+        cubic = ((self._fourth[step] / 384.0)[..., None] * decay[:, None]).sum(axis=2) * length[:, None, :] ** 4
         alive = amplitude > 1e-13 * scale[:, :, None, None]
         fastest = np.where(alive, pace[:, :, :, None] * length[:, None, None, :], 0.0).max(axis=2, initial=0.0)
-        return deviation, np.where(alive, turn, 0.0).sum(axis=2), fastest
+        return deviation, cubic, np.where(alive, turn, 0.0).sum(axis=2), fastest
 
     def glance(self, case: IntArray, row: IntArray, at_s: FloatArray, length_s: FloatArray) -> Glance:
         """See `Responses`."""

@@ -59,6 +59,13 @@ class DelayedSteps:
                     curves[case, :, first:last] = self.segment(case, step, since)
         return curves
 
+    def slopes(self) -> DelayedSteps:
+        """The derivatives."""
+        lowered = np.zeros_like(self.coefficients)
+        lowered[..., :-1] = self.coefficients[..., 1:] * np.arange(1, self.coefficients.shape[-1])
+        rates, theta = self.rates[:, None, None, :, None], self.dead_time_s[:, None, None, None, None]
+        return DelayedSteps(self.dead_time_s, self.edges_s, self.rates, rates * self.coefficients + lowered / theta)
+
     def at_shares(self, shares: FloatArray) -> FloatArray:
         """(c, 3, j·n) values at these shares (n,) of every dead time."""
         cases, delays, rows, groups, terms = self.coefficients.shape

@@ -65,21 +65,23 @@ def late_net(sums: ModalSums, from_s: FloatArray) -> Net:
     """The same from the instants (c,) at which the sums begin to hold."""
     time_s = _net_instants(sums, from_s)
     basis = np.exp(sums.exponents[:, :, None] * time_s[:, None, :])
-    value = _values(sums, basis)
+    value = _values(sums.weights, basis) + sums.offset[:, :, None]
+    slope = _values(sums.weights * sums.exponents[:, None, :], basis)
     scale = np.maximum(np.abs(value).max(axis=2), np.abs(sums.offset))
     size = np.abs(sums.weights)
     decay = np.abs(basis[:, :, :-1])
     turn = np.abs(sums.exponents)[:, :, None] * np.diff(time_s, axis=1)[:, None, :]
     square = turn * turn
     deviation = size @ (decay * np.minimum(2.0, 0.125 * square))
+    cubic = size @ (decay * np.minimum(2.0 + turn, square * square / 384.0))
     bend = size @ (decay * square)
     turns = _fastest_alive(size, decay, turn, scale)
-    return Net(time_s, value, deviation, bend, turns, scale)
+    return Net(time_s, value, slope, deviation, cubic, bend, turns, scale)
 
 
-def _values(sums: ModalSums, basis: ComplexArray) -> FloatArray:
-    real = np.concatenate([sums.weights.real, -sums.weights.imag], axis=2)
-    values: FloatArray = real @ np.concatenate([basis.real, basis.imag], axis=1) + sums.offset[:, :, None]
+def _values(weights: ComplexArray, basis: ComplexArray) -> FloatArray:
+    real = np.concatenate([weights.real, -weights.imag], axis=2)
+    values: FloatArray = real @ np.concatenate([basis.real, basis.imag], axis=1)
     return values
 
 

@@ -2,9 +2,10 @@
 
 Each case is looked at on a net of instants that grow geometrically. Between two neighbours a response stays within a
 known distance of the straight line through them: a mode of weight w and exponent λ leaves its own line over an
-interval of length h by no more than |w|·e^{Re λ·t}·min(2, (h·|λ|)²/8). Intervals that this bound rules out are
-dropped, the others are split, until what is left is one smooth arc to polish. A lightly damped ripple that
-the net steps over is therefore looked at exactly where it can matter, and nowhere else.
+interval of length h by no more than |w|·e^{Re λ·t}·min(2, (h·|λ|)²/8). The cubic that also meets the slopes is closer
+still where h·|λ| is small, (h·|λ|)⁴/384, and stays below the greatest of its four control values. Intervals that these
+bounds rule out are dropped, the others are split, until what is left is one smooth arc to polish. A lightly damped
+ripple that the net steps over is therefore looked at exactly where it can matter, and nowhere else.
 """
 
 from __future__ import annotations
@@ -67,8 +68,12 @@ class Net:
     """(c, k), from 0; the last one lies where every response has settled."""
     value: FloatArray
     """(c, 3, k)"""
+    slope: FloatArray
+    """(c, 3, k) dy/dt from the right, but at the last instant before a kink from the left."""
     deviation: FloatArray
     """(c, 3, k − 1)"""
+    cubic_deviation: FloatArray
+    """(c, 3, k − 1) largest distance from the cubic with the values and slopes of both ends."""
     bend: FloatArray
     """(c, 3, k − 1)"""
     turns: FloatArray
@@ -153,7 +158,7 @@ class _Search:
         tasks, net = self.tasks, self.net
         y = net.value[tasks.case, tasks.row]
         all_tasks = np.arange(len(tasks.kind))
-        g = np.where(tasks.sign[:, None] == 0.0, np.abs(y - tasks.reference[:, None]), tasks.sign[:, None] * y)
+        g = tasks.measure(all_tasks[:, None], y)
         times = net.time_s[tasks.case]
         at = g.argmax(axis=1)
         higher = self.greatest & (g[all_tasks, at] > self.best + NEGLIGIBLE * self.scale)
@@ -165,7 +170,13 @@ class _Search:
         self.outside_until = np.where(some, times[all_tasks, last], -1.0)
         self.reached_at = np.where(some, times[all_tasks, reached.argmax(axis=1)], np.inf)
         deviation = net.deviation[tasks.case, tasks.row]
-        upper = np.maximum(g[:, :-1], g[:, 1:]) + deviation
+        upper = np.maximum(g[:, :-1], g[:, 1:])
+        third = np.diff(times, axis=1) / 3.0
+        slope = net.slope[tasks.case, tasks.row]
+        inner = tasks.measure(all_tasks[:, None], y[:, :-1] + third * slope[:, :-1])
+        inner = np.maximum(inner, tasks.measure(all_tasks[:, None], y[:, 1:] - third * slope[:, 1:]))
+        cubic = np.maximum(upper, inner) + net.cubic_deviation[tasks.case, tasks.row]
+        upper = np.minimum(upper + deviation, cubic)
         task, k = np.nonzero(self._possible(all_tasks[:, None], times[:, :-1], times[:, 1:], upper))
         case, row = tasks.case[task], tasks.row[task]
         start = times[task, k]
@@ -182,7 +193,7 @@ class _Search:
         return possible
 
     def unfinished(self, intervals: _Intervals) -> BoolArray:
-        """(k,) intervals to split: all those of a task that is not down to arcs it can polish."""
+        """(k,) intervals to split: what is no arc yet; for a crossing, all that its task is left with besides one."""
         task = intervals.task
         start, length, left, right, _, bend, turns = intervals.table
         # Crossings: the slope keeps its sign, and the ends lie on both sides. Stationary points: one arc holds at most
@@ -193,7 +204,7 @@ class _Search:
         ready = np.where(self.greatest[task], turns <= 0.5, bracket) | tiny
         waiting = np.zeros(len(self.scale), dtype=np.bool_)
         waiting[task[~ready]] = True
-        unfinished: BoolArray = waiting[task] & ~tiny
+        unfinished: BoolArray = np.where(self.greatest[task], ~ready, waiting[task] & ~tiny)
         return unfinished
 
     def split(self, intervals: _Intervals) -> _Intervals:
