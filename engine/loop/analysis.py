@@ -20,7 +20,7 @@ class Analysis:
     """What every reading of a loop set is taken from."""
 
     samples: Sampled
-    brackets: Isolated
+    isolated: Isolated
     found: Found
     roots: ClosedLoopRoots
     peaks: Peaks
@@ -30,18 +30,18 @@ class Analysis:
 def analysis_of(loops: LoopSet) -> Analysis:
     """The analysis; a loop set is told by identity, so one assessment computes it once."""
     samples = sampled(loops)
-    brackets = isolate_crossings(samples)
+    isolated = isolate_crossings(samples)
     roots = closed_loop_roots(loops)
-    crossings = crossing_tasks(brackets.gain, brackets.phase)
-    extremes, limits = peak_tasks(samples, brackets, roots)
+    crossings = crossing_tasks(isolated.brackets)
+    extremes, limits = peak_tasks(samples, isolated.brackets, roots)
     # Crossings and peaks in one batch: a step of Newton's method costs the same for ten points and for fifty.
     omega, level = polished(samples, joined_tasks(crossings, extremes))
     first, rest = _split(omega, len(crossings.case))
     _, values = _split(level, len(crossings.case))
     return Analysis(
         samples,
-        brackets,
-        settled_crossings(samples, brackets, first),
+        isolated,
+        settled_crossings(samples, isolated.brackets, first),
         roots,
         settled_peaks(extremes, limits, rest, values),
     )

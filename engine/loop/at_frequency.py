@@ -14,7 +14,7 @@ from engine.loop.closed_loop_gain import Points, Quantity, log_level
 from engine.loop.loop_set import LoopSet
 from engine.loop.margins import DB
 from engine.loop.narrow import narrow_places
-from engine.loop.polish import Tasks, joined_tasks, polished
+from engine.loop.polish import Tasks, around, joined_tasks, polished
 from engine.loop.ripples import ripple_tasks
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
@@ -143,14 +143,15 @@ def _candidates(ready: Analysis, kind: Quantity, row: FloatArray, segment: _Segm
         column = inside[column]
         cases.append(where)
         start.append(omega[column])
-        left.append(np.maximum(omega[np.maximum(column - 1, 0)], segment.low))
-        right.append(np.minimum(omega[np.minimum(column + 1, len(omega) - 1)], segment.high))
+        before, after = around(omega, column)
+        left.append(np.maximum(before, segment.low))
+        right.append(np.minimum(after, segment.high))
     else:
         cases.append(np.arange(count))
         start.append(np.full(count, math.sqrt(segment.low) * math.sqrt(segment.high)))
         left.append(np.full(count, segment.low))
         right.append(np.full(count, segment.high))
-    where, at, before, after = narrow_places(ready.samples, ready.brackets, ready.roots)
+    where, at, before, after = narrow_places(ready.samples, ready.isolated.brackets, ready.roots)
     held = (at > segment.low) & (at < segment.high)
     cases.append(where[held])
     start.append(at[held])

@@ -4,15 +4,18 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import Literal, TypeAlias
 
 import numpy as np
 
 from engine.loop.closed_loop_gain import Quantity
 from engine.loop.gain_phase import gain_and_phase
-from engine.loop.isolation import TURN, Brackets, Kind, noise_of
-from engine.loop.polish import Tasks, joined_tasks
+from engine.loop.isolation import TURN, Brackets, noise_of
+from engine.loop.polish import Tasks
 from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.model.factored import FloatArray
+
+Kind: TypeAlias = Literal["gain", "phase"]
 
 _SAME_PLACE = 1e-6
 """Points this close (relative) are judged together: rounding may hide what lies between."""
@@ -34,7 +37,10 @@ class Crossings:
     def of(self, case: int) -> Crossings:
         """The points of one case."""
         first, last = np.searchsorted(self.case, [case, case + 1])
-        part = slice(int(first), int(last))
+        return self.part(slice(int(first), int(last)))
+
+    def part(self, part: slice) -> Crossings:
+        """A stretch of the list."""
         return Crossings(
             self.case[part],
             self.omega_rad_s[part],
@@ -44,50 +50,39 @@ class Crossings:
         )
 
 
-def crossing_tasks(gain: Brackets, phase: Brackets) -> Tasks:
-    """The crossings as levels to be met: gain first, then phase; touchings stay where they are."""
-    parts = []
-    for brackets, quantity in ((gain, Quantity.LOOP), (phase, Quantity.PHASE)):
-        crossing = brackets.left < brackets.right
-        moving = brackets if crossing.all() else brackets.where(crossing)
-        count = len(moving.case)
-        level = moving.level * TURN - math.pi if quantity == Quantity.PHASE else moving.level
-        sign = np.where(moving.rising, -1.0, 1.0)
-        kind = np.full(count, int(quantity), dtype=np.int64)
-        parts.append(Tasks(kind, moving.case, moving.left, moving.start, moving.right, level, sign, np.zeros(count)))
-    return joined_tasks(*parts)
+def crossing_tasks(brackets: Brackets) -> Tasks:
+    """The crossings as levels to be met; touchings stay where they are and are left out."""
+    crossing = brackets.left < brackets.right
+    moving = brackets if crossing.all() else brackets.where(crossing)
+    return Tasks(
+        np.where(moving.phase, int(Quantity.PHASE), int(Quantity.LOOP)),
+        moving.case,
+        moving.left,
+        moving.start,
+        moving.right,
+        np.where(moving.phase, moving.level * TURN - math.pi, moving.level),
+        np.where(moving.rising, -1.0, 1.0),
+        np.zeros(len(moving.case)),
+    )
 
 
-def in_order(loop: Sections, gain: Brackets, phase: Brackets, omega: FloatArray) -> tuple[Crossings, Crossings]:
+def in_order(loop: Sections, brackets: Brackets, omega: FloatArray) -> tuple[Crossings, Crossings]:
     """Gain and phase crossings by case and frequency; what rounding cannot tell apart is made one touching.
 
     omega: polished frequencies in the order of `crossing_tasks`.
     """
-    moving = [brackets.left < brackets.right for brackets in (gain, phase)]
-    first = int(np.count_nonzero(moving[0]))
-    places, cases, directions = [], [], []
-    for brackets, crossing, found in zip((gain, phase), moving, (omega[:first], omega[first:]), strict=True):
-        place = brackets.start.copy()
-        place[crossing] = found
-        places.append(place)
-        cases.append(brackets.case)
-        directions.append(np.where(crossing, np.where(brackets.rising, 1, -1), 0).astype(np.int64))
-    case, place = np.concatenate(cases), np.concatenate(places)
+    crossing = brackets.left < brackets.right
+    place = brackets.start.copy()
+    place[crossing] = omega
+    index = np.lexsort((place, brackets.case, brackets.phase))
+    case, place = brackets.case[index], place[index]
     level, turn = gain_and_phase(loop.at(case), place)
-    split = len(cases[0])
-    one = _sorted(Crossings(case[:split], place[:split], level[:split], turn[:split], directions[0]))
-    other = _sorted(Crossings(case[split:], place[split:], level[split:], turn[split:], directions[1]))
-    return _without_echoes(loop, one, "gain"), _without_echoes(loop, other, "phase")
-
-
-def _sorted(points: Crossings) -> Crossings:
-    index = np.lexsort((points.omega_rad_s, points.case))
-    return Crossings(
-        points.case[index],
-        points.omega_rad_s[index],
-        points.gain[index],
-        points.phase[index],
-        points.direction[index],
+    direction = np.where(crossing, np.where(brackets.rising, 1, -1), 0)[index]
+    split = len(index) - int(np.count_nonzero(brackets.phase))
+    both = Crossings(case, place, level, turn, direction)
+    return (
+        _without_echoes(loop, both.part(slice(0, split)), "gain"),
+        _without_echoes(loop, both.part(slice(split, None)), "phase"),
     )
 
 
@@ -135,4 +130,4 @@ def _rests_between(loop: Sections, points: Crossings, items: list[int], kind: Ki
     gain, phase = gain_and_phase(loop.at(case), 0.5 * (omega[1:] + omega[:-1]))
     turns = (phase + math.pi) / TURN
     off = np.abs(gain) if kind == "gain" else np.abs(turns - np.rint(turns))
-    return bool(np.all(off <= noise_of(loop, kind)[case]))
+    return bool(np.all(off <= noise_of(loop)[0 if kind == "gain" else 1][case]))

@@ -23,8 +23,7 @@ LISTED_AT_MOST = 400
 class Isolated:
     """Every gain and phase crossing in a bracket of its own, and what was noticed on the way."""
 
-    gain: Brackets
-    phase: Brackets
+    brackets: Brackets
     flat_gain: BoolArray
     """(c,) |L| rests at 1 over a whole stretch."""
     flat_phase: BoolArray
@@ -45,26 +44,23 @@ class Found:
 
 def isolate_crossings(samples: Sampled) -> Isolated:
     """A bracket for every gain and phase crossing at 0 < ω < ∞ of every case."""
-    nodes, reach, loop = samples.nodes, samples.reach, samples.loop
-    left, right = nodes.omega_rad_s[:-1], nodes.omega_rad_s[1:]
-    in_gain = (right > reach.gain_low[:, None]) & (left < reach.gain_high[:, None])
+    reach = samples.reach
     end, shortened = _end_of_phase_search(samples)
-    in_phase = (right > reach.phase_low[:, None]) & (left < end[:, None])
-    (gain, flat_gain), (phase, flat_phase) = isolated(samples, in_gain, in_phase)
-    listed_up_to = np.where(loop.dead_time_s > 0, end, math.inf)
-    return Isolated(gain, phase, flat_gain, flat_phase, listed_up_to, shortened)
+    brackets, flat = isolated(samples, (reach.gain_low, reach.gain_high), (reach.phase_low, end))
+    listed_up_to = np.where(samples.loop.dead_time_s > 0, end, math.inf)
+    return Isolated(brackets, flat[0], flat[1], listed_up_to, shortened)
 
 
 def find_crossings(samples: Sampled) -> Found:
     """Every crossing of every case, isolated and polished by itself."""
-    brackets = isolate_crossings(samples)
-    omega, _ = polished(samples, crossing_tasks(brackets.gain, brackets.phase))
+    brackets = isolate_crossings(samples).brackets
+    omega, _ = polished(samples, crossing_tasks(brackets))
     return settled_crossings(samples, brackets, omega)
 
 
-def settled_crossings(samples: Sampled, brackets: Isolated, omega: FloatArray) -> Found:
+def settled_crossings(samples: Sampled, brackets: Brackets, omega: FloatArray) -> Found:
     """The lists, from the polished frequencies in the order of `crossing_tasks`."""
-    return Found(*in_order(samples.loop, brackets.gain, brackets.phase, omega))
+    return Found(*in_order(samples.loop, brackets, omega))
 
 
 def _end_of_phase_search(samples: Sampled) -> tuple[FloatArray, BoolArray]:

@@ -112,7 +112,7 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
             readings |= poles[case]
         else:
             readings |= dict.fromkeys(_NEED_STABILITY, without_value("unstable", verdict.sentence))
-        notices = _notices(analysis.brackets, verdict, case)
+        notices = _notices(analysis.isolated, verdict, case)
         own_poles = analysis.roots.roots[case, : analysis.roots.count[case]] if fact.dead_time_s == 0 else None
         cases.append(
             CaseFrequency(

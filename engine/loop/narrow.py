@@ -7,9 +7,9 @@ import math
 import numpy as np
 
 from engine.loop.closed_loop_roots import ClosedLoopRoots
-from engine.loop.crossings import Isolated
 from engine.loop.gain_phase import gain_and_phase, slope
 from engine.loop.grid import Sampled
+from engine.loop.isolation import Brackets
 from engine.loop.sections import BoolArray, IntArray, Sections
 from engine.model.factored import FloatArray
 
@@ -18,7 +18,7 @@ _WIDEST = 0.03
 
 
 def narrow_places(
-    samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots
+    samples: Sampled, brackets: Brackets, roots: ClosedLoopRoots
 ) -> tuple[IntArray, FloatArray, FloatArray, FloatArray]:
     """(p,) case, frequency and bracket of closed-loop poles whose peak is narrower than the samples around it.
 
@@ -46,13 +46,11 @@ def narrow_places(
     return case, at, left, right
 
 
-def _near_passages(samples: Sampled, brackets: Isolated, unlisted: BoolArray) -> tuple[IntArray, FloatArray]:
+def _near_passages(samples: Sampled, brackets: Brackets, unlisted: BoolArray) -> tuple[IntArray, FloatArray]:
     """Poles seen from the crossings near −1 of the loops whose poles are not listed."""
     omega = samples.nodes.omega_rad_s
-    case = np.concatenate([brackets.gain.case, brackets.phase.case])
-    start = np.concatenate([brackets.gain.start, brackets.phase.start])
-    chosen = unlisted[case]
-    case, start = case[chosen], start[chosen]
+    chosen = unlisted[brackets.case]
+    case, start = brackets.case[chosen], brackets.start[chosen]
     own = samples.loop.at(case)
     gain, phase = gain_and_phase(own, start)
     near = np.abs(gain) + np.abs(np.sin(0.5 * (phase + math.pi))) < 0.35

@@ -9,11 +9,11 @@ import numpy as np
 
 from engine.loop.closed_loop_gain import Points, Quantity, log_level
 from engine.loop.closed_loop_roots import ClosedLoopRoots
-from engine.loop.crossings import Isolated
 from engine.loop.grid import Sampled
+from engine.loop.isolation import Brackets
 from engine.loop.limits import Limits, limits_of
 from engine.loop.narrow import narrow_places
-from engine.loop.polish import Tasks, joined_tasks
+from engine.loop.polish import Tasks, around, joined_tasks
 from engine.loop.ripples import ripple_tasks
 from engine.loop.sections import IntArray
 from engine.model.factored import FloatArray
@@ -37,7 +37,7 @@ class Peaks:
     """(c,) lowest ω with |T| = |T(0)|/√2; nan where there is none."""
 
 
-def peak_tasks(samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots) -> tuple[Tasks, Limits]:
+def peak_tasks(samples: Sampled, brackets: Brackets, roots: ClosedLoopRoots) -> tuple[Tasks, Limits]:
     """What is to be polished for the suprema and the bandwidth of every case, and the limits they compete with."""
     rows = _sampled_levels(samples)
     highest = rows.max(axis=2)
@@ -106,8 +106,9 @@ def _grid_candidates(samples: Sampled, rows: FloatArray, highest: FloatArray) ->
     with np.errstate(invalid="ignore", over="ignore"):
         lean = 0.5 * (before - after) / np.minimum(before - 2.0 * here + after, -1e-300)
     lean = np.where(np.isfinite(lean), np.minimum(np.maximum(lean, -0.9), 0.9), 0.0)
-    left, mid, right = omega[column - 1], omega[column], omega[column + 1]
-    start = mid * np.where(lean > 0, right / mid, mid / left) ** lean
+    mid = omega[column]
+    start = mid * np.where(lean > 0, omega[column + 1] / mid, mid / omega[column - 1]) ** lean
+    left, right = around(omega, column)
     return _extremes(quantity, case, left, start, right)
 
 
@@ -124,7 +125,7 @@ def _greatest_per_row(rows: FloatArray, quantity: IntArray, case: IntArray, colu
     return np.array(kept, dtype=np.int64)
 
 
-def _narrow_candidates(samples: Sampled, brackets: Isolated, roots: ClosedLoopRoots, highest: FloatArray) -> Tasks:
+def _narrow_candidates(samples: Sampled, brackets: Brackets, roots: ClosedLoopRoots, highest: FloatArray) -> Tasks:
     """The narrow places at which some gain comes near its greatest sample or exceeds it."""
     case, at, left, right = narrow_places(samples, brackets, roots)
     if not len(case):

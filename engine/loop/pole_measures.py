@@ -13,7 +13,8 @@ from engine.loop.reading import Reading, value, without_value
 _NAMES = ("least_damping", "slowest_pole_rad_s")
 _NONE = dict.fromkeys(_NAMES, without_value("unlimited", "the closed loop has no poles"))
 _UNLISTED = dict.fromkeys(
-    _NAMES, without_value("not determinable", "with dead time, no closed-loop pole could be told apart from the rest")
+    _NAMES,
+    without_value("not determinable", "the list of closed-loop poles of this loop with dead time is not sure"),
 )
 REACH = 3.0
 """With dead time, poles up to this multiple of the last crossover are judged by their damping."""
@@ -28,7 +29,9 @@ def pole_measures(roots: ClosedLoopRoots, last_crossover_rad_s: Sequence[float])
     e^−sθ's chain tends to 0 while its share in the response does as well. Only poles up to REACH times the last
     crossover (the first phase crossover where there is none, inf where nothing crosses) count for the damping.
     """
-    listed = roots.count.tolist()
+    # A list that the argument principle has not confirmed may lack the very pole that counts.
+    confirmed = [found is None or found.counted for found in roots.dominant]
+    listed = [count if sure else 0 for count, sure in zip(roots.count.tolist(), confirmed, strict=True)]
     if not roots.roots.shape[1]:
         return [dict(_NONE if complete else _UNLISTED) for complete in roots.complete.tolist()]
     size = np.abs(roots.roots)

@@ -11,6 +11,8 @@ from engine.loop.grid import Sampled
 from engine.loop.sections import BoolArray, IntArray
 from engine.model.factored import FloatArray
 
+_TWINS = 1e-12
+
 
 @dataclass(frozen=True, eq=False)
 class Tasks:
@@ -32,6 +34,22 @@ class Tasks:
 def joined_tasks(*parts: Tasks) -> Tasks:
     """All points in one batch, in order."""
     return Tasks(*(np.concatenate([getattr(part, field.name) for part in parts]) for field in fields(Tasks)))
+
+
+def around(omega: FloatArray, column: IntArray) -> tuple[FloatArray, FloatArray]:
+    """The neighbours of grid points between which an extreme at them lies.
+
+    Corners of different models may differ in the last digit; between such twins rounding decides which is the higher,
+    so the neighbour's neighbour is taken.
+    """
+    last = len(omega) - 1
+    left, right, here = np.maximum(column - 1, 0), np.minimum(column + 1, last), omega[column]
+    for _ in range(3):
+        twin_left, twin_right = here - omega[left] < _TWINS * here, omega[right] - here < _TWINS * here
+        if not (twin_left.any() or twin_right.any()):
+            break
+        left, right = np.maximum(left - twin_left, 0), np.minimum(right + twin_right, last)
+    return omega[left], omega[right]
 
 
 def polished(samples: Sampled, tasks: Tasks) -> tuple[FloatArray, FloatArray]:

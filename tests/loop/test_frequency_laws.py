@@ -17,7 +17,7 @@ from tests.loop.loops import UNITY, factored, pair, read
 
 CORNERS = st.floats(-2.0, 3.0).map(lambda x: 10.0**x)
 FREQUENCIES = {"crossover_rad_s", "last_crossover_rad_s", "bandwidth_rad_s", "slowest_pole_rad_s"}
-CURVED = {"peak_sensitivity", "peak_complementary_sensitivity", "effort_gain_db", "disk_margin"}
+POLE_MEASURES = {"least_damping", "slowest_pole_rad_s"}
 
 
 @st.composite
@@ -52,6 +52,9 @@ def assert_same(a: CaseFrequency, b: CaseFrequency, time_scale: float = 1.0, tol
     assert a.stable == b.stable
     for name, first in a.readings.items():
         second = b.readings[name]
+        if name in POLE_MEASURES and "not determinable" in (first.state, second.state):
+            # With dead time the list of poles is confirmed or not, depending on where its search began.
+            continue
         assert first.state == second.state, (name, first, second)
         if first.value is None or second.value is None:
             continue

@@ -8,6 +8,8 @@ import numpy as np
 import pytest
 import slycot
 
+from engine.loop.frequency import read_frequency
+from engine.loop.loop_set import LoopSet
 from engine.model.factored import Factored
 from tests.loop.loops import UNITY, factored, number, pair, read, states
 from tests.loop.random_loops import random_loop
@@ -166,6 +168,17 @@ def test_a_peak_among_ripples():
     assert at is not None
     # Neighbouring ripples differ in the eleventh digit: any of the best few will do.
     assert at == pytest.approx(omega[np.argmax(np.abs(C * S))], abs=15.0)
+
+
+def test_twin_corners_hide_no_peak():
+    # Two cases put corners at 1 and 1 + 4 ulps into one grid: between them rounding alone tells which sample is higher.
+    first = factored(-1.004987562112089, [], [-1.0], 1e-4)
+    second = factored(1.4142135623730956, [], [-1.0000000000000009, 0.0], 1e-4)
+    compensator = factored(-1.0, [], [0.0])
+    together = read_frequency(LoopSet((first, second), compensator)).cases[0]
+    np.testing.assert_allclose(
+        number(together, "disk_margin"), number(read(first, compensator), "disk_margin"), rtol=1e-10
+    )
 
 
 # Lowest ω with |T| = |T(0)|/√2. By hand: T = 1/(s+1) → 1; L = 1/s. T(0) = 0 has none.
