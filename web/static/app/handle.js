@@ -66,8 +66,9 @@ function followPointer(/** @type {SVGElement} */ node, /** @type {Hand} */ hand,
     store.hold(`move ${grasp.name()}`);
     hand.light(grasp, "held");
   });
-  node.addEventListener("pointermove", (event) => {
+  const follow = (/** @type {PointerEvent} */ event) => {
     if (event.pointerId !== pull?.id || !store.holding) return;
+    if (event.clientX === pull.x && event.clientY === pull.y) return;
     const part = event.shiftKey ? FINE : 1;
     pull.dx += (event.clientX - pull.x) * part;
     pull.dy += (event.clientY - pull.y) * part;
@@ -75,7 +76,11 @@ function followPointer(/** @type {SVGElement} */ node, /** @type {Hand} */ hand,
     pull.y = event.clientY;
     const value = rounded(grasp.dragged(pull.start, pull.dx, pull.dy));
     if (moveTo(store, grasp, value)) pace.moved(event.timeStamp, store.seq);
-  });
+  };
+  // pointermove waits for the next animation frame; the raw update, where there is one, reaches the server sooner,
+  // so that its answer can still be painted in that frame. The pointermove that follows it then changes nothing.
+  node.addEventListener("pointerrawupdate", /** @type {any} */ (follow));
+  node.addEventListener("pointermove", follow);
   const end = (/** @type {PointerEvent} */ event) => {
     if (event.pointerId !== pull?.id) return;
     pull = null;
