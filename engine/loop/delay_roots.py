@@ -16,6 +16,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from engine.loop.chain_tail import chain_plan
 from engine.loop.characteristic import BoolArray, Characteristic
 from engine.loop.packed import time_scales
 from engine.loop.simultaneous import EPSILON
@@ -28,7 +29,10 @@ REACH = 6.0
 """A root left of −REACH/θ has decayed by e^{−DELAYS·REACH} then."""
 FAINT = 3e-11
 """Size, relative to the whole, at which a chain root no longer counts after DELAYS dead times."""
-MOST_CHAIN_ROOTS = 320
+MOST_CHAIN_ROOTS = 1200
+ENOUGH_UNSTABLE = 60
+COMPANY = 72
+"""Start values that keep each other from one root; links of the chain farther up are too good to stray."""
 PADE_ORDER = 8
 PADE_TRUSTED = 11.0
 """Largest |Im s|·θ at which the Padé loop's roots serve as start values."""
@@ -49,7 +53,7 @@ class DominantRoots:
     counted: bool
     """Whether the argument principle confirms that none is missing."""
     faint: bool
-    """Whether what lies above `top_rad_s` is too faint to count; False for loops that hardly fall off."""
+    """Whether what lies above `top_rad_s` is too faint to count, or summed by `chain_tail`."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -60,6 +64,8 @@ class _Region:
     right: FloatArray
     top: FloatArray
     faint: BoolArray
+    fixed: BoolArray
+    """Whether the top stands midway between two links of the chain already."""
 
 
 def dominant_roots(loops: Sequence[Factored]) -> list[DominantRoots]:
@@ -68,7 +74,7 @@ def dominant_roots(loops: Sequence[Factored]) -> list[DominantRoots]:
     p = Characteristic.of(loops, scale)
     if p.dead_time is None:
         raise ValueError("dominant roots are for loops with dead time")
-    region = _region(p, loops)
+    region = _region(p, loops, scale)
     starts = _starts(loops, p, scale, region)
     found = _polished(p, starts, region)
     return _checked(p, found, region, scale)
@@ -84,7 +90,7 @@ def _loop_gain(p: Characteristic, s: ComplexArray) -> FloatArray:
     return gained
 
 
-def _region(p: Characteristic, loops: Sequence[Factored]) -> _Region:
+def _region(p: Characteristic, loops: Sequence[Factored], scale: FloatArray) -> _Region:
     """Where the roots that count are."""
     theta = np.ones(len(loops)) if p.dead_time is None else p.dead_time
     turns = np.geomspace(1.0, 2.0 * math.pi * MOST_CHAIN_ROOTS, 72)
@@ -97,8 +103,17 @@ def _region(p: Characteristic, loops: Sequence[Factored]) -> _Region:
     last = at.shape[1] - 1 - loud[:, ::-1].argmax(axis=1)
     last = np.where(loud.any(axis=1), np.minimum(last + 1, at.shape[1] - 1), 0)
     faint = ~loud[:, -1]
+    # A gain above 1 this far up makes an unstable root of every link: no need to list hundreds of them.
+    hopeless = np.any((at * theta[:, None] > 2.0 * math.pi * ENOUGH_UNSTABLE) & (gain > 1.0), axis=1)
+    enough = np.argmax(at * theta[:, None] > 2.0 * math.pi * ENOUGH_UNSTABLE, axis=1)
+    last, faint = np.where(hopeless, enough, last), faint & ~hopeless
     top = np.maximum(at[np.arange(len(loops)), last], 3.0 * math.pi / theta)
-    return _Region(-REACH / theta, _right_edge(p, theta, top), top, faint)
+    fixed = np.zeros(len(loops), dtype=np.bool_)
+    for case, (loop, unit) in enumerate(zip(loops, scale, strict=True)):
+        plan = chain_plan(loop)
+        if plan is not None and plan.links <= MOST_CHAIN_ROOTS:
+            top[case], faint[case], fixed[case] = plan.top_rad_s / unit, True, True
+    return _Region(-REACH / theta, _right_edge(p, theta, top), top, faint, fixed)
 
 
 def _right_edge(p: Characteristic, theta: FloatArray, top: FloatArray) -> FloatArray:
@@ -191,25 +206,28 @@ def _iterate(p: Characteristic, s: ComplexArray, live: BoolArray, region: _Regio
     factors = p.poles.mask.shape[0] + p.zeros.mask.shape[0] + 4
     theta = np.ones(len(s)) if p.dead_time is None else p.dead_time
     margin = 2.0 * math.pi / theta[:, None]
-    own = np.eye(s.shape[1])[:, None, :]
-    mutual = live.T[:, :, None] * (1.0 - own)
+    crew = min(s.shape[1], COMPANY)
+    own = np.eye(crew, s.shape[1])[:, None, :]
+    present = live.T[:crew, :, None]
+    mutual = present * (1.0 - own)
     waiting, settled = live.copy(), np.zeros(s.shape, dtype=np.bool_)
     # Start values on the real axis could never leave it.
     s = s + 1e-9 * np.abs(s) * np.exp(1j * (0.4 + 1.7 * np.arange(s.shape[1])))
     with np.errstate(all="ignore"):
         for _ in range(MOST_ITERATIONS):
             value, slope, size = p.newton(s)
-            gaps = s.T[:, :, None] - s
-            mirrored = s.conj().T[:, :, None] - s
+            gaps = s.T[:crew, :, None] - s
+            mirrored = s.conj().T[:crew, :, None] - s
             apart = np.abs(mirrored) > 1e-6 * np.abs(s)
             repulsion = np.add.reduce(mutual / (gaps + own), axis=0)
-            repulsion += np.add.reduce(np.where(apart, live.T[:, :, None] / mirrored, 0.0), axis=0)
+            repulsion += np.add.reduce(np.where(apart, present / mirrored, 0.0), axis=0)
             move = value / (slope + value * repulsion)
             move = np.where(np.abs(move) > margin, move * (margin / np.abs(move)), move)
             noise = 2.0 * EPSILON * (factors + np.abs(s) * theta[:, None]) * size / np.abs(slope)
             s = np.where(waiting, s - move, s)
             reached = np.abs(move) <= np.maximum(4.0 * EPSILON * np.abs(s), 0.1 * noise)
-            settled |= waiting & reached
+            # Far to the right, where e^{−sθ} has died, the slope dies as well and a small step proves nothing.
+            settled |= waiting & reached & (noise <= 1e-3 * np.abs(s))
             strayed = (s.real < region.left[:, None] - 2.0 * margin) | (s.imag > region.top[:, None] + 4.0 * margin)
             waiting &= ~(reached | strayed | ~np.isfinite(s))
             if not waiting.any():
@@ -278,7 +296,8 @@ def _above(p: Characteristic, region: _Region) -> list[ComplexArray]:
 
 
 def _inside(roots: ComplexArray, region: _Region, case: int) -> ComplexArray:
-    within: ComplexArray = roots[(roots.real > region.left[case]) & (roots.imag < region.top[case])]
+    right = (roots.real > region.left[case]) & (roots.real < region.right[case])
+    within: ComplexArray = roots[right & (roots.imag < region.top[case])]
     return within
 
 
@@ -291,9 +310,11 @@ def _between_roots(p: Characteristic, found: list[ComplexArray], region: _Region
             continue
         tries = left[case] + np.linspace(0.0, 0.9, 10) / theta[case]
         left[case] = tries[np.abs(roots.real - tries[:, None]).min(axis=1).argmax()]
+        if region.fixed[case]:
+            continue
         tries = top[case] + np.linspace(0.0, 0.95, 12) * 2.0 * math.pi / theta[case]
         top[case] = tries[np.abs(roots.imag - tries[:, None]).min(axis=1).argmax()]
-    return _Region(left, region.right, top, region.faint)
+    return _Region(left, region.right, top, region.faint, region.fixed)
 
 
 def _more_starts(

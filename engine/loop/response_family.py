@@ -8,9 +8,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.loop.closed_loop_roots import ClosedLoopRoots
-from engine.loop.delay_roots import DELAYS
+from engine.loop.delay_roots import DELAYS, DominantRoots
 from engine.loop.delayed_responses import DelayedResponses
 from engine.loop.delayed_steps import DelayedSteps, delayed_steps
+from engine.loop.lasting_steps import with_lasting_steps
 from engine.loop.loop_set import LoopSet
 from engine.loop.modal import ModalSums, Transfers, modal_sums, transfers_of
 from engine.loop.modal_responses import ModalResponses, modal_net
@@ -23,6 +24,8 @@ from engine.model.factored import FloatArray
 
 # Σ|weight| over the size of the response beyond which the residues are taken to cancel.
 CANCELLING = 1e5
+# Kinks of one case that get instants of their own on the time axis.
+MOST_KINKS = 24
 STEP = np.array([1, 1, 1])
 RAMP = np.array([2, 1, 2])
 
@@ -41,13 +44,28 @@ class Family:
     """Responses to what is shown."""
     integrations: NDArray[np.int64]
     """(3,) 1 for a step, 2 for a ramp: what is shown."""
-    early: DelayedSteps | None
+    loops: LoopSet
+    """The loops of these cases alone."""
+    first: DelayedSteps | None
     """Steps over the first dead times; None without dead time."""
-    early_shown: DelayedSteps | None
+    first_shown: DelayedSteps | None
     listed: NDArray[np.bool_]
     """(c,) whether the roots are listed; those of a loop with endlessly many unstable ones are not."""
     verified: NDArray[np.bool_]
     """(c,) whether the residues of what is shown are known not to cancel."""
+
+    def __post_init__(self) -> None:
+        self.early = self._lasting(self.first, self.steps, STEP)
+        same = self.first_shown is self.first
+        self.early_shown = self.early if same else self._lasting(self.first_shown, self.shown, self.integrations)
+
+    def _lasting(
+        self, first: DelayedSteps | None, sums: ModalSums, integrations: NDArray[np.int64]
+    ) -> DelayedSteps | None:
+        """The dead times during which steps are needed."""
+        if first is None:
+            return None
+        return with_lasting_steps(first, sums, self.loops, self.amplitudes, integrations)
 
     def read(self, rows: NDArray[np.int64]) -> tuple[list[dict[str, Reading]], FloatArray]:
         """Readings, and the sizes (k, 3) of the responses, of the stable ones among the cases."""
@@ -77,6 +95,7 @@ class Family:
         )
         if same:
             self.shown = self.steps
+        self.__post_init__()
 
     def _responses(self, rows: NDArray[np.int64]) -> tuple[Net, Responses]:
         sums = self.steps.of(rows)
@@ -106,7 +125,7 @@ class Family:
 
     def kinks_s(self) -> FloatArray:
         """Instants at which responses may jump."""
-        return np.empty(0) if self.early is None else self.early.edges_s[:, 1:].ravel()
+        return np.empty(0) if self.early is None else self.early.edges_s[:, 1 : MOST_KINKS + 1].ravel()
 
     def sample(self, grid: TimeGrid, closely: bool) -> FloatArray:
         """(c, 3, n) what is shown; values may overflow where a response grows.
@@ -126,6 +145,7 @@ class Family:
                 self.shown = with_rings(
                     self.shown, self.transfers, crowded, self.amplitudes, self.integrations, from_s, horizon
                 )
+                self.__post_init__()
                 curves = self._sampled(grid)
         return curves
 
@@ -160,20 +180,15 @@ def _family(
     steps = modal_sums(transfers, amplitudes, STEP)
     shown = modal_sums(transfers, amplitudes, integrations) if ramp else steps
     listed = np.ones(len(cases), dtype=np.bool_)
-    early, early_shown = None, None
+    first, first_shown = None, None
     if transfers.dead_time_s is not None:
-        early = delayed_steps(own, transfers, amplitudes, STEP, DELAYS)
-        early_shown = delayed_steps(own, transfers, amplitudes, integrations, DELAYS) if ramp else early
-        listed = np.array([roots.dominant[case] is not None for case in cases.tolist()])
-    return Family(
-        cases,
-        transfers,
-        amplitudes,
-        steps,
-        shown,
-        integrations,
-        early,
-        early_shown,
-        listed,
-        np.zeros(len(cases), dtype=np.bool_),
-    )
+        first = delayed_steps(own, transfers, amplitudes, STEP, DELAYS)
+        first_shown = delayed_steps(own, transfers, amplitudes, integrations, DELAYS) if ramp else first
+        listed = np.array([_is_listed(roots.dominant[case]) for case in cases.tolist()])
+    unverified = np.zeros(len(cases), dtype=np.bool_)
+    return Family(cases, transfers, amplitudes, steps, shown, integrations, own, first, first_shown, listed, unverified)
+
+
+def _is_listed(found: DominantRoots | None) -> bool:
+    """Whether the roots say how the response goes on: not where growing ones are left out."""
+    return found is not None and (found.faint or not bool((found.roots.real >= 0.0).any()))

@@ -83,7 +83,9 @@ def read_time(loops: LoopSet, view: FrequencyView, scenario: Scenario) -> TimeVi
     excess = np.empty((loops.count, 3), dtype=np.int64)
     for family in families:
         excess[family.cases] = family.transfers.excess
-    cases = tuple(CaseTime(each, _notices(excess[case].tolist())) for case, each in enumerate(readings))
+    cases = tuple(
+        CaseTime(each, _notices(excess[case].tolist(), _unsure(view, case))) for case, each in enumerate(readings)
+    )
     return TimeView(time_s, curves[:, 0], curves[:, 1], curves[:, 2], cases)
 
 
@@ -163,10 +165,22 @@ def _cut_off(
         curves[case][np.logical_or.accumulate(outside, axis=1)] = np.nan
 
 
-def _notices(excess: Sequence[int]) -> tuple[str, ...]:
+def _unsure(view: FrequencyView, case: int) -> bool:
+    """Whether roots that matter to a stable response with dead time may be missing."""
+    dominant = view.roots.dominant[case] if view.roots.dominant else None
+    return view.cases[case].stable and dominant is not None and not (dominant.counted and dominant.faint)
+
+
+def _notices(excess: Sequence[int], unsure: bool) -> tuple[str, ...]:
     names = ("output's answer to a command step", "output's answer to a load step", "effort")
-    return tuple(
+    listed = [
         f"The {name} begins with an impulse, which is not drawn: its transfer function has more zeros than poles."
         for name, more in zip(names, excess, strict=True)
         if more > 0
-    )
+    ]
+    if unsure:
+        listed.append(
+            "The loop gain hardly falls off beside this dead time: the time responses may be off by more than a "
+            "millionth of their peak near each kink."
+        )
+    return tuple(listed)

@@ -11,9 +11,10 @@ import pytest
 from engine.design.parse import parse_design
 from engine.design.resolve import loops_of
 from engine.loop.time_response import Scenario
+from engine.model.factored import Factored
 from tests.loop.time_views import factored, pair, readings_of, time_view
 from tests.outside.delayed_responses import DelayedSeries
-from tests.outside.loop import Loop, loop_of_design
+from tests.outside.loop import Loop, Part, loop_of_design
 from tests.outside.make_reference import stored
 from tests.outside.responses import SIGNALS
 
@@ -76,6 +77,55 @@ def test_readings_of_the_integrator_with_dead_time() -> None:
     np.testing.assert_allclose(readings["overshoot_pct"].at_s, float(t), rtol=1e-9)
     np.testing.assert_allclose(readings["peak_effort"].value, 0.5, rtol=1e-14)
     assert readings["peak_effort"].at_s == 0.0
+
+
+# Loops that never fall off, 0 < |L(∞)| < 1: static plants under proportional-integral control, an ideal
+# proportional-integral-derivative controller on a lag, both signs. Their responses jump at every dead time for ever.
+NEUTRAL = [
+    (factored(1.0, [], [], 1.0), factored(0.4, [-1.0], [0])),
+    (factored(-1.0, [], [], 1.0), factored(-0.2, [-2.0], [0])),
+    (factored(1.0, [-0.5], [-1.0], 1.0), factored(-0.3, [2.0], [0])),
+    (factored(1.0, [], [-1.0], 0.5), factored(0.6, [-1.2, -2.0], [0])),
+    (factored(0.3, [-4], [-2], 1.0), factored(2.0, [-1.3], [-0.4])),
+]
+
+
+@pytest.mark.parametrize("index", range(len(NEUTRAL)))
+def test_loops_that_never_fall_off(index: int) -> None:
+    plant, compensator = NEUTRAL[index]
+    theta = plant.dead_time_s
+    view = time_view([plant], compensator, Scenario(horizon_s=16.0 * theta), stable=True)
+    with mp.workdps(60):
+        loop = Loop(_part(compensator), _part(plant), mp.mpf(theta))
+        for row, signal in enumerate(SIGNALS):
+            got = (view.command, view.load, view.effort)[row][0]
+            assert worst_of_peak(got, loop, signal, view.time_s, 15.9 * theta) < 1e-10, signal
+    assert view.cases[0].notices == () or "impulse" in view.cases[0].notices[0]
+
+
+def _part(model: Factored) -> Part:
+    return Part(mp.mpf(model.gain), tuple(map(mp.mpc, model.zeros)), tuple(map(mp.mpc, model.poles)))
+
+
+def test_readings_across_jumps() -> None:
+    # By hand: the static plant k·e^(−sθ) under k·0.5: y jumps to 0.5, 0.25, 0.375, … → 1/3: partial sums of −(−1/2)^j.
+    readings = readings_of(factored(1.0, [], [], 0.4), factored(0.5, [], []))
+    np.testing.assert_allclose(readings["overshoot_pct"].value, 50.0, rtol=1e-9)
+    np.testing.assert_allclose(readings["rise_time_s"].value, 0.0, atol=1e-12)
+    np.testing.assert_allclose(readings["peak_effort"].value, 0.5, rtol=1e-12)
+    # |y − 1/3| = 1/3·2^(−j) after j dead times: inside 2 % from j = 6 on.
+    np.testing.assert_allclose(readings["settling_time_s"].value, 6 * 0.4, rtol=1e-12)
+
+
+def test_a_fast_filter_that_only_just_falls_off() -> None:
+    # Flat at |L| = 0.45 up to 400 rad per dead time, then falling: hundreds of roots in the chain count.
+    plant, compensator = factored(1.0, [], [], 1.0), factored(0.45 * 400.0, [-0.8], [0, -400.0])
+    view = time_view([plant], compensator, Scenario(horizon_s=8.0), stable=True)
+    with mp.workdps(60):
+        loop = Loop(_part(compensator), _part(plant), mp.mpf(1))
+        for row, signal in enumerate(SIGNALS):
+            got = (view.command, view.load, view.effort)[row][0]
+            assert worst_of_peak(got, loop, signal, view.time_s, 7.5) < 1e-7, signal
 
 
 def test_nothing_happens_before_the_dead_time_has_passed() -> None:
