@@ -128,55 +128,48 @@ def _worst(
 
 def _candidates(ready: Analysis, kind: Quantity, row: FloatArray, segment: _Segment, sign: float, tilt: float) -> Tasks:
     """The ends, the local extremes of the samples between them, and places where a narrow one may hide."""
-    omega = ready.samples.nodes.omega_rad_s
     count = row.shape[0]
+    omega = ready.samples.nodes.omega_rad_s
     inside = np.nonzero((omega > segment.low) & (omega < segment.high))[0]
-    case = np.repeat(np.arange(count), 2)
-    ends = np.tile([segment.low, segment.high], count)
-    left, start, right = [ends], [ends], [ends]
-    cases = [case]
-    if len(inside):
-        height = sign * (row[:, inside] - tilt * np.log(omega[inside]))
-        padded = np.pad(height, ((0, 0), (1, 1)), constant_values=-math.inf)
-        local = (height >= padded[:, :-2]) & (height >= padded[:, 2:])
-        where, column = np.nonzero(local)
-        column = inside[column]
-        cases.append(where)
-        start.append(omega[column])
-        before, after = around(omega, column)
-        left.append(np.maximum(before, segment.low))
-        right.append(np.minimum(after, segment.high))
-    else:
-        cases.append(np.arange(count))
-        start.append(np.full(count, math.sqrt(segment.low) * math.sqrt(segment.high)))
-        left.append(np.full(count, segment.low))
-        right.append(np.full(count, segment.high))
+    height = sign * (row[:, inside] - tilt * np.log(omega[inside]))
+    case, end = np.repeat(np.arange(count), 2), np.tile([segment.low, segment.high], count)
+    at_ends = sign * (log_level(_points(ready, kind, case), end) - tilt * np.log(end))
+    found = [(case, end, end, end), _local_extremes(omega, inside, height, segment)]
     where, at, before, after = narrow_places(ready.samples, ready.isolated.brackets, ready.roots)
     held = (at > segment.low) & (at < segment.high)
-    cases.append(where[held])
-    start.append(at[held])
-    left.append(np.maximum(before[held], segment.low))
-    right.append(np.minimum(after[held], segment.high))
-    all_cases = np.concatenate(cases)
-    found = Tasks(
-        np.full(len(all_cases), int(kind), dtype=np.int64),
-        all_cases,
-        np.concatenate(left),
-        np.concatenate(start),
-        np.concatenate(right),
-        np.full(len(all_cases), math.nan),
-        np.full(len(all_cases), sign),
-        np.full(len(all_cases), tilt),
+    found.append((where[held], before[held], at[held], after[held]))
+    cases, left, start, right = (np.concatenate(parts) for parts in zip(*found, strict=True))
+    size = len(cases)
+    tasks = Tasks(
+        np.full(size, int(kind), dtype=np.int64),
+        cases,
+        np.maximum(left, segment.low),
+        start,
+        np.minimum(right, segment.high),
+        np.full(size, math.nan),
+        np.full(size, sign),
+        np.full(size, tilt),
     )
     if kind in (Quantity.LOOP, Quantity.PHASE):
-        return found
-    ends = log_level(_points(ready, kind, case), np.tile([segment.low, segment.high], count))
-    height = sign * (ends - tilt * np.log(np.tile([segment.low, segment.high], count)))
-    best = height.reshape(count, 2).max(axis=1)
-    if len(inside):
-        best = np.maximum(best, (sign * (row[:, inside] - tilt * np.log(omega[inside]))).max(axis=1))
+        return tasks
+    best = np.maximum(at_ends.reshape(count, 2).max(axis=1), height.max(axis=1, initial=-math.inf))
     band = (segment.low, segment.high)
-    return joined_tasks(found, ripple_tasks(ready.samples, (kind,), best[None, :], sign, tilt, band))
+    return joined_tasks(tasks, ripple_tasks(ready.samples, (kind,), best[None, :], sign, tilt, band))
+
+
+def _local_extremes(
+    omega: FloatArray, inside: IntArray, height: FloatArray, segment: _Segment
+) -> tuple[IntArray, FloatArray, FloatArray, FloatArray]:
+    """Case, bracket and start of each local maximum of the samples; the middle where no sample lies inside."""
+    count = height.shape[0]
+    if not len(inside):
+        middle = np.full(count, math.sqrt(segment.low) * math.sqrt(segment.high))
+        return np.arange(count), np.full(count, segment.low), middle, np.full(count, segment.high)
+    padded = np.pad(height, ((0, 0), (1, 1)), constant_values=-math.inf)
+    case, column = np.nonzero((height >= padded[:, :-2]) & (height >= padded[:, 2:]))
+    column = inside[column]
+    left, right = around(omega, column)
+    return case, left, omega[column], right
 
 
 def _sampled_row(ready: Analysis, kind: Quantity) -> FloatArray:

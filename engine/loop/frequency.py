@@ -5,11 +5,11 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import NamedTuple
+from typing import NamedTuple, TypeAlias
 
 import numpy as np
 
-from engine.loop.analysis import analysis_of
+from engine.loop.analysis import Analysis, analysis_of
 from engine.loop.closed_loop_roots import ClosedLoopRoots
 from engine.loop.crossing_polish import Crossings
 from engine.loop.crossings import LISTED_AT_MOST, Isolated
@@ -80,55 +80,56 @@ def read_frequency(loops: LoopSet) -> FrequencyView:
     analysis = analysis_of(loops)
     samples, found, peaks = analysis.samples, analysis.found, analysis.peaks
     verdicts = decide_stability(samples, found, analysis.roots)
-    facts = _facts(samples)
     gains, phases = _by_case(found.gain, loops.count), _by_case(found.phase, loops.count)
-    poles = pole_measures(
-        analysis.roots,
-        [
-            gain[-1][0] if gain else phase[0][0] if phase else math.inf
-            for gain, phase in zip(gains, phases, strict=True)
-        ],
-    )
-    suprema = list(
-        zip(peaks.log_value.T.tolist(), peaks.at_rad_s.T.tolist(), peaks.bandwidth_rad_s.tolist(), strict=True)
-    )
-    cases = []
-    for case, verdict in enumerate(verdicts):
-        fact = facts[case]
-        gain_crossovers = tuple(
-            GainCrossover(omega, signed_distance_deg(phase), direction) for omega, _, phase, direction in gains[case]
-        )
-        phase_crossovers = _phase_crossovers(fact, [(omega, gain) for omega, gain, _, _ in phases[case]])
-        readings = error_constants(fact.integrators, fact.low_gain)
-        readings["crossover_rad_s"] = crossover(gain_crossovers)
-        readings["last_crossover_rad_s"] = last_crossover(gain_crossovers)
-        if verdict.stable:
-            up, down = gain_margins(phase_crossovers, _limit_db(fact))
-            readings["phase_margin_deg"] = phase_margin(gain_crossovers)
-            readings["gain_margin_db"], readings["gain_reduction_margin_db"] = up, down
-            readings["delay_margin_s"] = delay_margin(gain_crossovers, _high_gain(fact))
-            readings |= _peak_readings(*suprema[case])
-            readings |= final_errors(fact.integrators, fact.low_gain)
-            readings |= poles[case]
-        else:
-            readings |= dict.fromkeys(_NEED_STABILITY, without_value("unstable", verdict.sentence))
-        notices = _notices(analysis.isolated, verdict, case)
-        own_poles = analysis.roots.roots[case, : analysis.roots.count[case]] if fact.dead_time_s == 0 else None
-        cases.append(
-            CaseFrequency(
-                verdict.stable,
-                verdict.sentence,
-                verdict.unstable_poles,
-                readings,
-                gain_crossovers,
-                phase_crossovers,
-                own_poles,
-                notices,
-            )
-        )
+    last = [a[-1][0] if a else b[0][0] if b else math.inf for a, b in zip(gains, phases, strict=True)]
+    suprema = zip(peaks.log_value.T.tolist(), peaks.at_rad_s.T.tolist(), peaks.bandwidth_rad_s.tolist(), strict=True)
+    parts = zip(verdicts, _facts(samples), gains, phases, suprema, pole_measures(analysis.roots, last), strict=True)
+    cases = tuple(_case(analysis, case, *part) for case, part in enumerate(parts))
     nodes = samples.nodes
-    return FrequencyView(
-        nodes.omega_rad_s, nodes.gain * DB, nodes.phase * (180.0 / math.pi), tuple(cases), analysis.roots
+    return FrequencyView(nodes.omega_rad_s, nodes.gain * DB, nodes.phase * (180.0 / math.pi), cases, analysis.roots)
+
+
+_Point: TypeAlias = tuple[float, float, float, int]
+"""rad/s, ln|L|, phase [rad], direction."""
+
+
+def _case(
+    analysis: Analysis,
+    case: int,
+    verdict: Stability,
+    fact: _Facts,
+    gains: list[_Point],
+    phases: list[_Point],
+    suprema: tuple[list[float], list[float], float],
+    poles: dict[str, Reading],
+) -> CaseFrequency:
+    gain_crossovers = tuple(
+        GainCrossover(omega, signed_distance_deg(phase), direction) for omega, _, phase, direction in gains
+    )
+    phase_crossovers = _phase_crossovers(fact, phases)
+    readings = error_constants(fact.integrators, fact.low_gain)
+    readings["crossover_rad_s"] = crossover(gain_crossovers)
+    readings["last_crossover_rad_s"] = last_crossover(gain_crossovers)
+    if verdict.stable:
+        up, down = gain_margins(phase_crossovers, _limit_db(fact))
+        readings["phase_margin_deg"] = phase_margin(gain_crossovers)
+        readings["gain_margin_db"], readings["gain_reduction_margin_db"] = up, down
+        readings["delay_margin_s"] = delay_margin(gain_crossovers, _high_gain(fact))
+        readings |= _peak_readings(*suprema)
+        readings |= final_errors(fact.integrators, fact.low_gain)
+        readings |= poles
+    else:
+        readings |= dict.fromkeys(_NEED_STABILITY, without_value("unstable", verdict.sentence))
+    roots = analysis.roots
+    return CaseFrequency(
+        verdict.stable,
+        verdict.sentence,
+        verdict.unstable_poles,
+        readings,
+        gain_crossovers,
+        phase_crossovers,
+        roots.roots[case, : roots.count[case]] if fact.dead_time_s == 0 else None,
+        _notices(analysis.isolated, verdict, case),
     )
 
 
@@ -160,9 +161,9 @@ def _facts(samples: Sampled) -> list[_Facts]:
     return [_Facts(*row) for row in zip(*(column.tolist() for column in columns), strict=True)]
 
 
-def _by_case(points: Crossings, count: int) -> list[list[tuple[float, float, float, int]]]:
-    """(rad/s, ln|L|, phase, direction) of the points of each case, by frequency."""
-    lists: list[list[tuple[float, float, float, int]]] = [[] for _ in range(count)]
+def _by_case(points: Crossings, count: int) -> list[list[_Point]]:
+    """The points of each case, by frequency."""
+    lists: list[list[_Point]] = [[] for _ in range(count)]
     for case, *point in zip(
         points.case.tolist(),
         points.omega_rad_s.tolist(),
@@ -193,9 +194,9 @@ _NEED_STABILITY = (
 )
 
 
-def _phase_crossovers(fact: _Facts, points: list[tuple[float, float]]) -> tuple[PhaseCrossover, ...]:
+def _phase_crossovers(fact: _Facts, points: list[_Point]) -> tuple[PhaseCrossover, ...]:
     """The crossings at finite frequencies, and L(0) and L(∞) where they are real and negative."""
-    listed = [PhaseCrossover(omega, gain * DB) for omega, gain in points]
+    listed = [PhaseCrossover(omega, gain * DB) for omega, gain, _, _ in points]
     if fact.integrators == 0 and fact.turn != 0:
         listed.insert(0, PhaseCrossover(0.0, fact.log_gain * DB))
     if fact.relative_degree == 0 and fact.dead_time_s == 0 and math.cos(fact.phase_infinite) < -0.5:
