@@ -14,7 +14,7 @@ _NAMES = ("least_damping", "slowest_pole_rad_s")
 _NONE = dict.fromkeys(_NAMES, without_value("unlimited", "the closed loop has no poles"))
 _UNLISTED = dict.fromkeys(
     _NAMES,
-    without_value("not determinable", "the list of closed-loop poles of this loop with dead time is not sure"),
+    without_value("not determinable", "the closed-loop poles are not known for sure"),
 )
 REACH = 3.0
 """With dead time, poles up to this multiple of the last crossover are judged by their damping."""
@@ -58,6 +58,8 @@ def pole_measures(roots: ClosedLoopRoots, last_crossover_rad_s: Sequence[float])
 
 
 def _readings(complete: bool, ratio: float, at: float, decay: float, place: float, end: float) -> dict[str, Reading]:
+    if not (math.isfinite(decay) and math.isfinite(place)):
+        return dict(_UNLISTED)
     slowest = value(decay, at_rad_s=place)
     if complete:
         return {_NAMES[0]: value(ratio, at_rad_s=at), _NAMES[1]: slowest}

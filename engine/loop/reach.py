@@ -20,6 +20,8 @@ from engine.model.factored import ComplexArray, FloatArray
 _NOTHING = 1e-12
 _HIGHEST_SUM = 8
 _QUARTER = 0.5 * math.pi
+_FARTHEST = 300.0
+"""ln of the frequencies that are searched at most: beyond, squares leave the range of numbers."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,6 +50,8 @@ class Reach:
     """Phase for ω → 0 [rad]."""
     phase_infinite: FloatArray
     """Phase for ω → ∞, dead time left aside [rad]."""
+    complete: BoolArray
+    """False where the gain crosses 1 at a frequency beyond all numbers that are searched."""
 
 
 def reach_of(model: Sections) -> Reach:
@@ -99,6 +103,7 @@ def reach_of(model: Sections) -> Reach:
         log_high_gain=log_limit[1],
         phase_zero=phase[0],
         phase_infinite=phase[1],
+        complete=np.logical_and.reduce(np.abs(log_limit) < _FARTHEST * np.maximum(np.abs(degree), 1.0), axis=0),
     )
 
 
@@ -179,4 +184,4 @@ def _on_level(phase: FloatArray) -> BoolArray:
 
 
 def _bounded(exponent: FloatArray) -> FloatArray:
-    return np.minimum(np.maximum(exponent, -300.0), 300.0)
+    return np.minimum(np.maximum(exponent, -_FARTHEST), _FARTHEST)

@@ -40,8 +40,11 @@ class Stability:
 
 def decide_stability(samples: Sampled, found: Found, roots: ClosedLoopRoots) -> tuple[Stability, ...]:
     """The verdict per case."""
-    counted = encirclement_count(samples, found).tolist()
-    rooted = np.add.reduce(roots.roots.real > 0, axis=1).tolist()
+    by_roots = np.add.reduce(roots.roots.real > 0, axis=1)
+    # A crossing out of all reach (a gain of 1e300) leaves the roots alone to decide.
+    alone = roots.complete & ~samples.reach.complete
+    counted = np.where(alone, by_roots, encirclement_count(samples, found)).tolist()
+    rooted = by_roots.tolist()
     boundary = _boundary_reasons(samples, found)
     hidden = _hidden_modes(samples)
     return tuple(

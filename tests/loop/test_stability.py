@@ -159,3 +159,9 @@ def test_unstable_loop_keeps_what_is_still_defined():
     assert number(case, "crossover_rad_s") == pytest.approx(2.0, rel=1e-14)
     assert case.gain_crossovers[0].signed_phase_margin_deg == pytest.approx(90 - 2 * np.degrees(np.arctan(2)))
     assert [point.rad_s for point in case.phase_crossovers] == pytest.approx([1.0])
+
+
+def test_gains_beyond_all_reason_are_left_to_the_roots():
+    # By hand: (s+1)² + 1e300 has its roots at −1 ± j·1e150, s(s+30) + 1e-300… at about −1e-301: both stable.
+    assert read(factored(1e300, [], [-1, -1])).stable
+    assert read(factored(1e-300, [], [-30, 0])).stable
