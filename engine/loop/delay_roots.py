@@ -121,6 +121,8 @@ def _right_edge(p: Characteristic, theta: FloatArray, top: FloatArray) -> FloatA
     farthest = np.where(p.poles.mask[:, :, 0] > 0.0, p.poles.roots[:, :, 0].real, -np.inf)
     beyond = np.maximum(farthest.max(axis=0, initial=-np.inf), 0.0)
     heights = np.concatenate([[0.0], np.geomspace(1e-4, 4.0, 60)]) * top[:, None]
+    # |L₀| is largest at the height of a lightly damped pole, which falls between these.
+    heights = np.concatenate([heights, np.abs(p.poles.roots[:, :, 0].imag.T)], axis=1)
     right: FloatArray = beyond + 0.5 / theta
     for _ in range(40):
         with np.errstate(over="ignore"):
