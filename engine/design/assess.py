@@ -130,6 +130,7 @@ def _judge_all(design: Design, readings: list[dict[str, Reading]], frequency: Fr
             stable,
             loops,
             [names.index(name) for name in row.cases] if row.cases else everywhere,
+            unit_of(row.measure, design),
         )
         for row in design.requirements
     ]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import cast
 
 import numpy as np
@@ -40,7 +40,7 @@ class Judged:
 
 
 def judge(row: Requirement, readings: Sequence[Mapping[str, Reading]], stable: Sequence[bool],
-          loops: LoopSet, chosen: Sequence[int]) -> Judged:  # fmt: skip
+          loops: LoopSet, chosen: Sequence[int], unit: str) -> Judged:  # fmt: skip
     """The worst case of one requirement.
 
     Parameters
@@ -50,6 +50,7 @@ def judge(row: Requirement, readings: Sequence[Mapping[str, Reading]], stable: S
     stable : per plant case; every requirement needs a stable loop
     loops : the loops, for measures read at chosen frequencies
     chosen : indices of the plant cases the row applies to
+    unit : in which a shortfall is told
     """
     measure = MEASURES[row.measure]
     if measure.per_frequency:
@@ -57,7 +58,10 @@ def judge(row: Requirement, readings: Sequence[Mapping[str, Reading]], stable: S
     else:
         judged = [_compare(row, measure, case[row.measure]) for case in readings]
     per_case = [_with_case(judged[index], index, stable[index]) for index in chosen]
-    return _first_of_the_worst(per_case)
+    worst = _first_of_the_worst(per_case)
+    if worst.met is False and worst.reading.value is not None and worst.limit is not None:
+        return replace(worst, shortfall=_shortfall(unit, worst.reading.value, worst.limit))
+    return worst
 
 
 def _first_of_the_worst(per_case: Sequence[Judged]) -> Judged:
@@ -118,17 +122,16 @@ def _one_side(measure: Measure, reading: Reading, side: Side, limit: float) -> J
     if reading.state == "value" and reading.value is not None:
         met = reading.value >= limit if side == "at_least" else reading.value <= limit
         slack = slack_of(measure.scale, side, reading.value, limit)
-        return Judged(reading, slack, met, "" if met else _shortfall(measure, side, reading.value, limit), None, limit)
+        return Judged(reading, slack, met, "", None, limit)
     if reading.state == "not determinable":
         return Judged(reading, None, None, reading.why, None, limit)
     met = reading.state == "unlimited" and side == "at_least"
     return Judged(reading, None, met, "" if met else reading.why or reading.state, None, limit)
 
 
-def _shortfall(measure: Measure, side: Side, found: float, limit: float) -> str:
-    gap = abs(found - limit)
-    unit = "points" if measure.unit == "%" else measure.unit
-    return f"{quantity(gap, unit)} {'short' if side == 'at_least' else 'over'}"
+def _shortfall(unit: str, found: float, limit: float) -> str:
+    gap = quantity(abs(found - limit), "points" if unit == "%" else unit)
+    return f"{gap} {'short' if found < limit else 'over'}"
 
 
 # --- measures read at chosen frequencies ------------------------------------------------------------------------

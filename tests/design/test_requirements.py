@@ -24,7 +24,14 @@ def _judge(row: dict[str, Any], *found: Reading, stable: list[bool] | None = Non
     requirement = Requirement(**row)
     readings = [{requirement.measure: reading} for reading in found]
     everywhere = list(range(len(found)))
-    return judge(requirement, readings, stable or [True] * len(found), NO_LOOPS, chosen or everywhere)
+    return judge(
+        requirement,
+        readings,
+        stable or [True] * len(found),
+        NO_LOOPS,
+        chosen or everywhere,
+        MEASURES[requirement.measure].unit,
+    )
 
 
 # The table of states in the contract: state, met by at_least, met by at_most.
@@ -57,6 +64,12 @@ def test_of_cases_that_agree_but_for_rounding_the_first_is_named() -> None:
     # A miss by the last digit stays a miss.
     limit = _judge(row, value(4.5), value(math.nextafter(4.5, 9.0)))
     assert (limit.met, limit.case) == (False, 1)
+
+
+def test_a_shortfall_is_told_in_the_unit_of_the_signal() -> None:
+    readings = [{"peak_effort": value(7.5)}]
+    judged = judge(Requirement(measure="peak_effort", at_most=6), readings, [True], NO_LOOPS, [0], "kW")
+    assert judged.shortfall == "1.5 kW over"
 
 
 def test_a_row_for_some_cases_looks_at_those_only() -> None:
