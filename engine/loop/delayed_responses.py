@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from engine.loop.delayed_steps import DelayedSteps
 from engine.loop.modal import ModalSums
 from engine.loop.modal_responses import ModalResponses, late_net
-from engine.loop.response_search import Follower, Glance, IntArray, Net
+from engine.loop.response_search import Follower, Glance, IntArray, Net, interval_bounds
 from engine.model.factored import FloatArray
 
 # Instants of the net in each dead time of the method of steps.
@@ -60,12 +60,19 @@ class DelayedResponses:
         # Between the instants just before and just after a kink nothing is to be found.
         for array in (deviation, cubic, bend, turns):
             array[:, :, PER_STEP - 1 :: PER_STEP] = 0.0
+        early = np.concatenate([times, self._until_s[:, None]], axis=1)
+        highs, lows = interval_bounds(
+            early,
+            np.concatenate([value, late.value[:, :, :1]], axis=2),
+            np.concatenate([slope, slope[:, :, -1:]], axis=2),
+            deviation,
+            cubic,
+        )
         return Net(
             np.concatenate([times, late.time_s], axis=1),
             np.concatenate([value, late.value], axis=2),
-            np.concatenate([slope, late.slope], axis=2),
-            np.concatenate([deviation, late.deviation], axis=2),
-            np.concatenate([cubic, late.cubic_deviation], axis=2),
+            np.concatenate([highs, late.high], axis=2),
+            np.concatenate([lows, late.low], axis=2),
             np.concatenate([bend, late.bend], axis=2),
             np.concatenate([turns, late.turns], axis=2),
             scale,

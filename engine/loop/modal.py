@@ -53,10 +53,10 @@ class ModalSums:
         fastest = float(np.where(counts, np.abs(self.exponents), 0.0).max(initial=0.0))
         return 1.0 / fastest if fastest > 0.0 else 1.0
 
-    def sample(self, basis: ComplexArray, time_s: FloatArray) -> FloatArray:
-        """(c, 3, n) values at `time_s` (n,), where `basis` (c, m, n) is e^{exponent·time}."""
+    def sample(self, basis: FloatArray, time_s: FloatArray) -> FloatArray:
+        """(c, 3, n) values at `time_s` (n,), where `basis` (c, 2m, n) holds Re and Im of e^{exponent·time}."""
         real = np.concatenate([self.weights.real, -self.weights.imag], axis=2)
-        summed: FloatArray = real @ np.concatenate([basis.real, basis.imag], axis=1)
+        summed: FloatArray = real @ basis
         summed += self.offset[:, :, None]
         if self.slope.any():
             summed += self.slope[:, :, None] * time_s

@@ -5,12 +5,16 @@ from __future__ import annotations
 import numpy as np
 
 from engine.loop.modal import ModalSums
-from engine.loop.response_search import Follower, Glance, IntArray, Net
+from engine.loop.response_search import Follower, Glance, IntArray, Net, interval_bounds
 from engine.model.factored import ComplexArray, FloatArray
 
-NET_INSTANTS = 160
+# Instants of the net: a geometric sequence that grows by 9 % each.
+PER_OCTAVE = 8
+MOST_OCTAVES = 90
 # A mode below this share of its response's scale can move no reading.
 ASLEEP = 1e-13
+# A ripple below this share moves an extremum by no more than that, and need not be followed turn by turn.
+QUIET = 1e-10
 # Share of Σ|weight| at which a mode counts as died out, and that of a mode too small to ask for early instants.
 DIED_OUT = 1e-14
 TOO_SMALL = 1e-9
@@ -49,11 +53,10 @@ class ModalResponses:
 
 def _bounds(size: FloatArray, turn: FloatArray, scale: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Deviation, bend and turns over intervals on which mode i has at most `size` and turns h·|λ|; modes on axis 0."""
-    alive = size > ASLEEP * scale
-    awake = np.where(alive, size, 0.0)
+    awake = np.where(size > ASLEEP * scale, size, 0.0)
     square = turn * turn
     deviation = np.add.reduce(awake * np.minimum(2.0, 0.125 * square), axis=0)
-    return deviation, np.add.reduce(awake * square, axis=0), np.max(turn * alive, axis=0, initial=0.0)
+    return deviation, np.add.reduce(awake * square, axis=0), np.max(turn * (size > QUIET * scale), axis=0, initial=0.0)
 
 
 def modal_net(sums: ModalSums) -> Net:
@@ -63,20 +66,42 @@ def modal_net(sums: ModalSums) -> Net:
 
 def late_net(sums: ModalSums, from_s: FloatArray) -> Net:
     """The same from the instants (c,) at which the sums begin to hold."""
-    time_s = _net_instants(sums, from_s)
-    basis = np.exp(sums.exponents[:, :, None] * time_s[:, None, :])
+    size = np.abs(sums.weights)
+    since, basis = _net_basis(sums, size, from_s)
+    time_s = from_s[:, None] + since
     value = _values(sums.weights, basis) + sums.offset[:, :, None]
     slope = _values(sums.weights * sums.exponents[:, None, :], basis)
     scale = np.maximum(np.abs(value).max(axis=2), np.abs(sums.offset))
-    size = np.abs(sums.weights)
     decay = np.abs(basis[:, :, :-1])
-    turn = np.abs(sums.exponents)[:, :, None] * np.diff(time_s, axis=1)[:, None, :]
+    turn = np.abs(sums.exponents)[:, :, None] * np.diff(since, axis=1)[:, None, :]
     square = turn * turn
     deviation = size @ (decay * np.minimum(2.0, 0.125 * square))
     cubic = size @ (decay * np.minimum(2.0 + turn, square * square / 384.0))
     bend = size @ (decay * square)
     turns = _fastest_alive(size, decay, turn, scale)
-    return Net(time_s, value, slope, deviation, cubic, bend, turns, scale)
+    high, low = interval_bounds(time_s, value, slope, deviation, cubic)
+    return Net(time_s, value, high, low, bend, turns, scale)
+
+
+def _net_basis(sums: ModalSums, size: FloatArray, from_s: FloatArray) -> tuple[FloatArray, ComplexArray]:
+    """(c, k) instants since `from_s`, 0 and a geometric sequence, and (c, m, k) e^{exponent·t} at them.
+
+    From one octave to the next the exponentials are squared, which costs nothing and loses no more digits than
+    rounding of exponent·t itself would.
+    """
+    start, octaves = _net_extent(sums, size, from_s)
+    first = start[:, None] * 2.0 ** (np.arange(PER_OCTAVE) / PER_OCTAVE)
+    since = np.empty((len(start), 1 + PER_OCTAVE * octaves))
+    since[:, 0] = 0.0
+    since[:, 1:] = (first[:, None, :] * 2.0 ** np.arange(octaves)[:, None]).reshape(len(start), -1)
+    basis = np.empty((*sums.exponents.shape, since.shape[1]), dtype=np.complex128)
+    begin = np.exp(sums.exponents * from_s[:, None])[:, :, None]
+    basis[:, :, :1] = 1.0
+    power = np.exp(sums.exponents[:, :, None] * first[:, None, :])
+    for octave in range(octaves):
+        basis[:, :, 1 + octave * PER_OCTAVE : 1 + (octave + 1) * PER_OCTAVE] = power
+        power = power * power
+    return since, basis * begin if from_s.any() else basis
 
 
 def _values(weights: ComplexArray, basis: ComplexArray) -> FloatArray:
@@ -89,23 +114,20 @@ def _fastest_alive(size: FloatArray, decay: FloatArray, turn: FloatArray, scale:
     """(c, 3, k) h·|λ| of the fastest mode that is alive in any row."""
     with np.errstate(all="ignore"):
         share = np.where(scale[:, :, None] > 0.0, size / scale[:, :, None], 0.0).max(axis=1)
-    alive = share[:, :, None] * decay > ASLEEP
+    alive = share[:, :, None] * decay > QUIET
     turns = np.max(turn * alive, axis=1, initial=0.0)
     return np.broadcast_to(turns[:, None, :], (*scale.shape, turns.shape[1]))
 
 
-def _net_instants(sums: ModalSums, from_s: FloatArray) -> FloatArray:
-    """(c, k) the first instant and a geometric sequence from there."""
-    size = np.abs(sums.weights) * np.exp(sums.exponents.real * from_s[:, None])[:, None, :]
+def _net_extent(sums: ModalSums, size: FloatArray, from_s: FloatArray) -> tuple[FloatArray, int]:
+    """(c,) the first instant after `from_s`, and the number of octaves to where the slowest case has died out."""
+    if from_s.any():
+        size = size * np.exp(sums.exponents.real * from_s[:, None])[:, None, :]
     total = size.sum(axis=2, keepdims=True)
     with np.errstate(divide="ignore", invalid="ignore"):
         share = np.where(total > 0.0, size / total, 0.0).max(axis=1)
         lifetime = np.where(share > DIED_OUT, np.log(share / DIED_OUT) / -sums.exponents.real, 0.0)
         fastest = np.where(share > TOO_SMALL, np.abs(sums.exponents), 0.0).max(axis=1, initial=0.0)
         end = np.where(fastest > 0.0, lifetime.max(axis=1, initial=0.0), 1.0)
-        start = np.where(fastest > 0.0, 0.25 / fastest, 1e-3)
-    steps = np.linspace(0.0, 1.0, NET_INSTANTS - 1)
-    times = np.empty((len(end), NET_INSTANTS))
-    times[:, 0] = 0.0
-    times[:, 1:] = start[:, None] * (end / start)[:, None] ** steps
-    return times + from_s[:, None]
+        start = np.where(fastest > 0.0, 0.25 / fastest, 0.5)
+    return start, int(min(max(np.ceil(np.log2((end / start).max(initial=1.0))), 1.0), MOST_OCTAVES))

@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Protocol, TypeAlias
 
 import numpy as np
@@ -24,10 +25,14 @@ BoolArray: TypeAlias = NDArray[np.bool_]
 
 GREATEST, LAST_OUTSIDE, FIRST_REACHED = 0, 1, 2
 SPLIT = 8
+# h·|λ| up to which an interval is one smooth arc, and how many of them one is cut into at once.
+ARC = 1.0
+MOST_PARTS = 64
 MOST_ROUNDS = 14
 # Newton's steps in an arc; one that has not settled by then goes back and forth between its ends.
 ARC_STEPS = 6
-MOST_INTERVALS = 40_000
+MOST_STEPS = 60
+MOST_INTERVALS = 5_000
 # Below this share of the response's scale a difference is rounding.
 NEGLIGIBLE = 1e-12
 
@@ -62,24 +67,43 @@ class Responses(Protocol):
 
 @dataclass(frozen=True, eq=False)
 class Net:
-    """Responses at the first instants of the search."""
+    """Responses at the first instants of the search, and what holds between these."""
 
     time_s: FloatArray
     """(c, k), from 0; the last one lies where every response has settled."""
     value: FloatArray
     """(c, 3, k)"""
-    slope: FloatArray
-    """(c, 3, k) dy/dt from the right, but at the last instant before a kink from the left."""
-    deviation: FloatArray
-    """(c, 3, k − 1)"""
-    cubic_deviation: FloatArray
-    """(c, 3, k − 1) largest distance from the cubic with the values and slopes of both ends."""
+    high: FloatArray
+    """(c, 3, k − 1) no response rises above this over the interval,"""
+    low: FloatArray
+    """(c, 3, k − 1) nor falls below this."""
     bend: FloatArray
     """(c, 3, k − 1)"""
     turns: FloatArray
     """(c, 3, k − 1)"""
     scale: FloatArray
     """(c, 3) size of each response, against which rounding is judged."""
+
+
+def interval_bounds(
+    time_s: FloatArray, value: FloatArray, slope: FloatArray, deviation: FloatArray, cubic_deviation: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """(c, 3, k − 1) highest and lowest values over the intervals of a net.
+
+    Parameters
+    ----------
+    time_s : (c, k)
+    value, slope : (c, 3, k) y and dy/dt
+    deviation : (c, 3, k − 1) largest distance from the chord
+    cubic_deviation : (c, 3, k − 1) and from the cubic with the values and slopes of both ends
+    """
+    third = np.diff(time_s, axis=1)[:, None, :] / 3.0
+    left, right = value[:, :, :-1], value[:, :, 1:]
+    after, before = left + third * slope[:, :, :-1], right - third * slope[:, :, 1:]
+    top, bottom = np.maximum(left, right), np.minimum(left, right)
+    high = np.minimum(top + deviation, np.maximum(top, np.maximum(after, before)) + cubic_deviation)
+    low = np.maximum(bottom - deviation, np.minimum(bottom, np.minimum(after, before)) - cubic_deviation)
+    return high, low
 
 
 @dataclass(frozen=True, eq=False)
@@ -93,14 +117,30 @@ class Tasks:
     sign: FloatArray
     """±1, or 0 for |y − reference|."""
     reference: FloatArray
+    """0 where sign is not 0."""
     level: FloatArray
     """For GREATEST: the value that counts if nothing exceeds it (the limit at ∞)."""
 
     def measure(self, task: IntArray, y: FloatArray) -> FloatArray:
         """g of the tasks at values y."""
-        sign = self.sign[task]
-        measured: FloatArray = np.where(sign == 0.0, np.abs(y - self.reference[task]), sign * y)
+        away = y - self.reference[task]
+        up, down = self._factors
+        measured: FloatArray = np.maximum(up[task] * away, down[task] * away)
         return measured
+
+    def bound(self, task: IntArray, high: FloatArray, low: FloatArray) -> FloatArray:
+        """The highest g of the tasks where y lies between `low` and `high`."""
+        reference = self.reference[task]
+        up, down = self._factors
+        ends = np.where(up[task] > 0.0, high, low) - reference, np.where(down[task] > 0.0, high, low) - reference
+        highest: FloatArray = np.maximum(up[task] * ends[0], down[task] * ends[1])
+        return highest
+
+    @cached_property
+    def _factors(self) -> tuple[FloatArray, FloatArray]:
+        """g is the greater of these two times the distance from the reference."""
+        both = self.sign == 0.0
+        return np.where(both, 1.0, self.sign), np.where(both, -1.0, self.sign)
 
 
 @dataclass(eq=False)
@@ -132,11 +172,16 @@ def search(tasks: Tasks, net: Net, responses: Responses) -> Findings:
     intervals = state.first_intervals()
     for _ in range(MOST_ROUNDS):
         unfinished = state.unfinished(intervals)
-        if not unfinished.any() or np.count_nonzero(unfinished) * SPLIT > MOST_INTERVALS:
+        if not unfinished.any() or np.count_nonzero(unfinished) > MOST_INTERVALS:
             break
         parts = state.split(intervals if unfinished.all() else intervals.only(unfinished))
         intervals = state.pruned(parts if unfinished.all() else intervals.only(~unfinished).beside(parts))
     return state.polished(intervals)
+
+
+def _rows(array: FloatArray) -> FloatArray:
+    """(3c, k) of (c, 3, k)."""
+    return array.reshape(-1, array.shape[-1])
 
 
 class _Search:
@@ -156,9 +201,10 @@ class _Search:
     def first_intervals(self) -> _Intervals:
         """The intervals of the net that no bound rules out."""
         tasks, net = self.tasks, self.net
-        y = net.value[tasks.case, tasks.row]
         all_tasks = np.arange(len(tasks.kind))
-        g = tasks.measure(all_tasks[:, None], y)
+        flat = tasks.case * 3 + tasks.row
+        column = all_tasks[:, None]
+        g = tasks.measure(column, _rows(net.value)[flat])
         times = net.time_s[tasks.case]
         at = g.argmax(axis=1)
         higher = self.greatest & (g[all_tasks, at] > self.best + NEGLIGIBLE * self.scale)
@@ -169,20 +215,14 @@ class _Search:
         last = g.shape[1] - 1 - reached[:, ::-1].argmax(axis=1)
         self.outside_until = np.where(some, times[all_tasks, last], -1.0)
         self.reached_at = np.where(some, times[all_tasks, reached.argmax(axis=1)], np.inf)
-        deviation = net.deviation[tasks.case, tasks.row]
-        upper = np.maximum(g[:, :-1], g[:, 1:])
-        third = np.diff(times, axis=1) / 3.0
-        slope = net.slope[tasks.case, tasks.row]
-        inner = tasks.measure(all_tasks[:, None], y[:, :-1] + third * slope[:, :-1])
-        inner = np.maximum(inner, tasks.measure(all_tasks[:, None], y[:, 1:] - third * slope[:, 1:]))
-        cubic = np.maximum(upper, inner) + net.cubic_deviation[tasks.case, tasks.row]
-        upper = np.minimum(upper + deviation, cubic)
-        task, k = np.nonzero(self._possible(all_tasks[:, None], times[:, :-1], times[:, 1:], upper))
-        case, row = tasks.case[task], tasks.row[task]
+        upper = tasks.bound(column, _rows(net.high)[flat], _rows(net.low)[flat])
+        task, k = np.nonzero(self._possible(column, times[:, :-1], times[:, 1:], upper))
+        own = flat[task]
         start = times[task, k]
-        length = times[task, k + 1] - start
-        bounds = deviation[task, k], net.bend[case, row, k], net.turns[case, row, k]
-        return _Intervals(task, np.stack([start, length, g[task, k], g[task, k + 1], *bounds]))
+        left, right = g[task, k], g[task, k + 1]
+        beyond = upper[task, k] - np.maximum(left, right)
+        bounds = beyond, _rows(net.bend)[own, k], _rows(net.turns)[own, k]
+        return _Intervals(task, np.stack([start, times[task, k + 1] - start, left, right, *bounds]))
 
     def _possible(self, task: IntArray, start: FloatArray, end: FloatArray, upper: FloatArray) -> BoolArray:
         """Whether an interval may still hold what its task looks for."""
@@ -201,25 +241,27 @@ class _Search:
         level = self.tasks.level[task]
         bracket = (np.abs(right - left) > bend) & ((left >= level) != (right >= level))
         tiny = length <= 4e-16 * (start + length)
-        ready = np.where(self.greatest[task], turns <= 0.5, bracket) | tiny
+        ready = np.where(self.greatest[task], turns <= ARC, bracket) | tiny
         waiting = np.zeros(len(self.scale), dtype=np.bool_)
         waiting[task[~ready]] = True
         unfinished: BoolArray = np.where(self.greatest[task], ~ready, waiting[task] & ~tiny)
         return unfinished
 
     def split(self, intervals: _Intervals) -> _Intervals:
-        """Each interval in SPLIT parts; the running bounds take in the new values."""
+        """Each interval in parts, as many as make arcs of it; the running bounds take in the new values."""
         tasks = self.tasks
-        task = np.repeat(intervals.task, SPLIT)
-        count = len(intervals.task)
-        first, whole, left, right = intervals.table[:4]
-        length = np.repeat(whole / SPLIT, SPLIT)
-        start = (first[:, None] + np.arange(SPLIT) * (whole / SPLIT)[:, None]).ravel()
+        first, whole, left, right, _, _, turns = intervals.table
+        wanted = np.minimum(np.maximum(np.ceil(turns / ARC), 2.0), MOST_PARTS)
+        parts = np.where(self.greatest[intervals.task], wanted, SPLIT).astype(np.int64)
+        ends = np.cumsum(parts)
+        task = np.repeat(intervals.task, parts)
+        length = np.repeat(whole / parts, parts)
+        start = np.repeat(first, parts) + (np.arange(len(task)) - np.repeat(ends - parts, parts)) * length
         seen = self.responses.glance(tasks.case[task], tasks.row[task], start, length)
-        ends = np.empty((count, SPLIT + 1))
-        ends[:, :-1] = tasks.measure(task, seen.value).reshape(count, SPLIT)
-        ends[:, 0], ends[:, -1] = left, right
-        begin, end = ends[:, :-1].ravel(), ends[:, 1:].ravel()
+        begin = tasks.measure(task, seen.value)
+        begin[ends - parts] = left
+        end = np.append(begin[1:], 0.0)
+        end[ends - 1] = right
         self.take_in(task, start, begin)
         return _Intervals(task, np.stack([start, length, begin, end, seen.deviation, seen.bend, seen.turns]))
 
@@ -269,26 +311,31 @@ class _Search:
         """Newton's method in every piece together: on y′ = 0 in arcs, on g = level in brackets; (k,) instants and y."""
         task, tasks = pieces.task, self.tasks
         start, length, left, right = pieces.table[:4]
-        sign, level, arc = tasks.sign[task], tasks.level[task], self.greatest[task]
-        reference, enough = tasks.reference[task], 1e-15 * self.scale[task]
+        level, arc = tasks.level[task], self.greatest[task]
+        # A bracket lies on one side of the reference.
+        side = tasks.sign[task]
         follow = self.responses.follow(tasks.case[task], tasks.row[task], start + 0.5 * length)
         low, high, rising = start.copy(), start + length, right >= level
+        # A step this short leaves its square, which is nothing.
+        close = np.where(arc, 1e-5, 1e-8) * length
         with np.errstate(all="ignore"):
             t = low + length * np.where(arc, 0.5, np.clip((level - left) / (right - left), 0.0, 1.0))
-            for turn in range(60):
+            for turn in range(MOST_STEPS):
                 y, slope, curvature = follow(t)
-                side = np.where(sign == 0.0, np.where(y >= reference, 1.0, -1.0), sign)
-                gap = np.where(sign == 0.0, np.abs(y - reference), sign * y) - level
-                beyond = (gap >= 0.0) == rising
-                low, high = np.where(arc | beyond, low, t), np.where(arc | ~beyond, high, t)
-                move = np.where(arc, slope / curvature, gap / (side * slope))
+                if turn == 0:
+                    side = np.where(side == 0.0, np.where(y >= tasks.reference[task], 1.0, -1.0), side)
+                    target = tasks.reference[task] + side * level
+                gap = y - target
+                beyond = arc | ((side * gap >= 0.0) == rising)
+                low, high = np.where(beyond, low, t), np.where(beyond & ~arc, t, high)
+                move = np.where(arc, slope / curvature, gap / slope)
                 step = t - np.where(np.isfinite(move), move, 0.0)
-                outside = np.where((step >= low) & (step <= high), step, 0.5 * (low + high))
                 # An arc without a stationary point has its greatest value at an end.
-                ahead = np.where(arc, np.clip(step, low, high), outside)
-                close = np.where(arc, 1e-5 * length, 1e-15 * t)
-                done = (np.abs(ahead - t) <= close) | np.where(arc, turn >= ARC_STEPS, np.abs(gap) <= enough)
-                t = np.where(done & ~arc, t, ahead)
+                inside = np.where(arc | ((step >= low) & (step <= high)), step, 0.5 * (low + high))
+                ahead = np.minimum(np.maximum(inside, low), high)
+                done = (np.abs(ahead - t) <= close) | (arc & (turn >= ARC_STEPS))
+                by, t = ahead - t, ahead
                 if done.all():
                     break
-        return t, follow(t)[0]
+        # What the last step was too short to change is not computed again.
+        return t, y + by * (slope + 0.5 * by * curvature)

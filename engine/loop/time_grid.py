@@ -12,8 +12,8 @@ from engine.model.factored import ComplexArray, FloatArray
 
 # A geometric part shows what the fastest modes do, which a uniform one alone would miss; the uniform part is a coarse
 # comb times a fine one, so that its exponentials are products of few.
-GEOMETRIC = 112
-COARSE, FINE = 18, 16
+GEOMETRIC = 80
+COARSE, FINE = 20, 16
 SHARES = np.linspace(0.0, 1.0, GEOMETRIC)
 EARLIEST = 1e-7
 STEPS = (1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0, 10.0)
@@ -33,14 +33,21 @@ class TimeGrid:
     coarse_s: FloatArray
     fine_s: FloatArray
 
-    def basis(self, exponents: ComplexArray) -> ComplexArray:
-        """(c, m, n) e^{exponent·time} at `joined_s`; growth is cut off far beyond what is shown."""
+    def basis(self, exponents: ComplexArray) -> FloatArray:
+        """(c, 2m, n) real parts, then imaginary parts of e^{exponent·time} at `joined_s`.
+
+        Growth is cut off far beyond what is shown.
+        """
         geometric = _exponential(exponents, self.geometric_s)
         coarse, fine = _exponential(exponents, self.coarse_s), _exponential(exponents, self.fine_s)
+        cases, modes = exponents.shape
         uniform = coarse[:, :, :, None] * fine[:, :, None, :]
-        flat = uniform.reshape(*exponents.shape, len(self.coarse_s) * len(self.fine_s))
-        merged: ComplexArray = np.concatenate([geometric, flat], axis=2)
-        return merged
+        uniform = uniform.reshape(cases, modes, len(self.coarse_s) * len(self.fine_s))
+        parts = np.empty((cases, 2 * modes, len(self.joined_s)))
+        cut = len(self.geometric_s)
+        parts[:, :modes, :cut], parts[:, modes:, :cut] = geometric.real, geometric.imag
+        parts[:, :modes, cut:], parts[:, modes:, cut:] = uniform.real, uniform.imag
+        return parts
 
 
 def _exponential(exponents: ComplexArray, time_s: FloatArray) -> ComplexArray:
