@@ -32,7 +32,7 @@ class Lane:
     def warm_up(self) -> None:
         """Start the workers without waiting for them: loading numpy takes a moment."""
         for _ in self._workers:
-            self._threads.submit(self._call, _nothing, ())
+            self._threads.submit(self._call, len, ("",))
 
     async def run(self, work: Callable[..., Result], *arguments: Any) -> Result:
         """The result of `work(*arguments)`, a function of a module, computed by a worker.
@@ -66,9 +66,3 @@ class Lane:
         self._threads.shutdown(wait=False, cancel_futures=True)
         for worker in self._workers:
             worker.end()
-
-
-def _nothing() -> None:
-    """The first work of a worker: afterwards everything that it needs is loaded."""
-    import server.computing
-    import server.live_answer  # noqa: F401

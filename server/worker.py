@@ -23,7 +23,8 @@ from server.quiet_numerics import quiet_numerics
 LOG_FORMAT = "%(asctime)s %(levelname)s %(name)s: %(message)s"
 _LOG = logging.getLogger("loopwright.worker")
 _SPAWN = get_context("spawn")  # a fork would copy the server's sockets and threads
-_DONE, _FAULTS, _SURPRISE = "done", "faults", "surprise"
+_READY, _DONE, _FAULTS, _SURPRISE = "ready", "done", "faults", "surprise"
+_START_SECONDS = 60.0
 _CLOSING = "the server is closing"
 
 
@@ -51,8 +52,8 @@ class Worker:
         """
         if self._ended:
             raise RefusedError(503, _CLOSING)
-        line = self.start()
         try:
+            line = self.start()
             line.send((work, arguments))
             if not line.poll(seconds):
                 self.stop()
@@ -72,7 +73,7 @@ class Worker:
         return value
 
     def start(self) -> Connection[Any, Any]:
-        """Make sure that the process runs; it is started once and kept."""
+        """Make sure that the process runs and has loaded what it needs; it is started once and kept."""
         if self._line is not None and self._process is not None and self._process.is_alive():
             return self._line
         self.stop()
@@ -80,6 +81,10 @@ class Worker:
         self._process = _SPAWN.Process(target=_work, args=(others, self._niceness), daemon=True)
         self._process.start()
         others.close()
+        # Loading numpy is no part of the time that a computation may take.
+        if not self._line.poll(_START_SECONDS):
+            raise EOFError("not ready in time")
+        self._line.recv()
         return self._line
 
     def end(self) -> None:
@@ -104,6 +109,10 @@ def _work(line: Connection[Any, Any], niceness: int) -> None:
         os.nice(niceness)
     logging.basicConfig(level=logging.WARNING, format=LOG_FORMAT)
     quiet_numerics()
+    import server.computing
+    import server.live_answer  # noqa: F401  only a worker needs these two
+
+    line.send(_READY)
     while True:
         try:
             work, arguments = line.recv()
