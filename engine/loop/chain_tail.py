@@ -25,6 +25,7 @@ LARGEST_EXCESS = 1e6
 # |L(∞)| below which the chain has died out when the sum over roots begins.
 SOON_FAINT = 0.01
 MOST_STEPS = 150
+MOST_LINKS = 240
 LOWEST_ORDER = -2
 
 
@@ -41,7 +42,7 @@ class ChainPlan:
 
 
 def chain_plan(loop: Factored) -> ChainPlan | None:
-    """The plan for a loop whose chain has to be summed; None for loops that fall off."""
+    """The plan for a loop whose chain has to be summed; None for loops that fall off, or whose chain is too long."""
     if loop.relative_degree != 0 or not SOON_FAINT < abs(loop.gain) < 1.0 or loop.dead_time_s == 0.0:
         return None
     theta = loop.dead_time_s
@@ -56,6 +57,8 @@ def chain_plan(loop: Factored) -> ChainPlan | None:
     reach = size * (1.0 / CUT_OFF) ** (1.0 / terms)
     first = _first_link(loop.gain)
     links = max(math.ceil(reach * theta / (2.0 * math.pi)), 8)
+    if links > MOST_LINKS:
+        return None
     return ChainPlan(terms, links, 2.0 * math.pi * (links - 0.5 + first) / theta)
 
 

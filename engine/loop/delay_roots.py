@@ -29,7 +29,7 @@ REACH = 6.0
 """A root left of −REACH/θ has decayed by e^{−DELAYS·REACH} then."""
 FAINT = 3e-11
 """Size, relative to the whole, at which a chain root no longer counts after DELAYS dead times."""
-MOST_CHAIN_ROOTS = 1200
+MOST_CHAIN_ROOTS = 240
 ENOUGH_UNSTABLE = 60
 COMPANY = 72
 """Start values that keep each other from one root; links of the chain farther up are too good to stray."""
@@ -111,7 +111,7 @@ def _region(p: Characteristic, loops: Sequence[Factored], scale: FloatArray) -> 
     fixed = np.zeros(len(loops), dtype=np.bool_)
     for case, (loop, unit) in enumerate(zip(loops, scale, strict=True)):
         plan = chain_plan(loop)
-        if plan is not None and plan.links <= MOST_CHAIN_ROOTS:
+        if plan is not None:
             top[case], faint[case], fixed[case] = plan.top_rad_s / unit, True, True
     return _Region(-REACH / theta, _right_edge(p, theta, top), top, faint, fixed)
 

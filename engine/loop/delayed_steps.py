@@ -156,19 +156,22 @@ def _steps(
     turns = np.where(radii[:, :, None] > 0.0, centres[:, :, None] + arms, 1.0 + 0.0j)
     s = np.asarray((turns / scaled_theta[:, None, None]).reshape(count, width * NODES), dtype=np.complex128)
     around = (arms * weight[:, :, None]).reshape(count, width * NODES) / scaled_theta[:, None]
-    values = _round_trips(transfers, s, scaled_theta, amplitudes, integrations, delays) * around[:, None, None, :]
-    growth = np.exp(np.maximum(s.real * scaled_theta[:, None], 0.0))
-    spread = (np.abs(values) * growth[:, None, None, :]).max(axis=(1, 3))
-    series = _expanded(values.reshape(count, delays, 3, width, NODES), radii)
     edges = theta[:, None] * np.arange(delays + 1)
-    steps = DelayedSteps(theta, edges, centres / theta[:, None], series)
+    # An unstable pole many time constants per dead time overflows; what it drives has left every range by then.
     with np.errstate(all="ignore"):
+        trips = _round_trips(transfers, s, scaled_theta, amplitudes, integrations, delays)
+        values = np.where(around[:, None, None, :] == 0.0, 0.0, trips * around[:, None, None, :])
+        growth = np.exp(np.maximum(s.real * scaled_theta[:, None], 0.0))
+        spread = (np.abs(values) * growth[:, None, None, :]).max(axis=(1, 3))
+        series = _expanded(values.reshape(count, delays, 3, width, NODES), radii)
+        steps = DelayedSteps(theta, edges, centres / theta[:, None], series)
         peak = np.abs(steps.at_shares(np.linspace(0.0, 1.0, 5))).max(axis=2)
         share = np.where(peak > 0.0, spread * 1e-15 / peak, 0.0)
     share = np.nan_to_num(share, nan=np.inf).max(axis=1)
     # Circles that reach far to the right drown the response, and with it the peak just taken.
     reach = np.where(radii > 0.0, centres.real + radii, 0.0).max(axis=1) * (delays - 1)
-    return steps, np.where(reach > MOST_GROWTH, np.exp(np.minimum(reach, 600.0)) * share, share)
+    far = np.exp(np.minimum(reach, 300.0)) * np.minimum(share, 1e150)
+    return steps, np.where(reach > MOST_GROWTH, far, share)
 
 
 def _round_trips(

@@ -18,6 +18,8 @@ QUIET = 1e-10
 # Share of Σ|weight| at which a mode counts as died out, and that of a mode too small to ask for early instants.
 DIED_OUT = 1e-14
 TOO_SMALL = 1e-9
+# Instants times modes computed at once: 16 MB of complex numbers.
+MOST_TERMS = 1_000_000
 
 
 class ModalResponses:
@@ -32,6 +34,10 @@ class ModalResponses:
 
     def glance(self, case: IntArray, row: IntArray, at_s: FloatArray, length_s: FloatArray) -> Glance:
         """See `Responses`."""
+        blocks = self._blocks(len(case))
+        if len(blocks) > 1:
+            parts = [self.glance(case[part], row[part], at_s[part], length_s[part]) for part in blocks]
+            return Glance(*(np.concatenate([getattr(part, name) for part in parts]) for name in Glance.__annotations__))
         exponents, weights = self._exponents[:, case], self._weights[:, case, row]
         terms = weights * np.exp(exponents * at_s)
         value = self._offset[case, row] + np.add.reduce(terms.real, axis=0)
@@ -39,6 +45,15 @@ class ModalResponses:
 
     def follow(self, case: IntArray, row: IntArray, inside_s: FloatArray) -> Follower:
         """See `Responses`."""
+        blocks = self._blocks(len(case))
+        if len(blocks) > 1:
+
+            def piecewise(at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+                parts = [self.follow(case[part], row[part], inside_s[part])(at_s[part]) for part in blocks]
+                value, slope, bend = (np.concatenate(rows) for rows in zip(*parts, strict=True))
+                return value, slope, bend
+
+            return piecewise
         exponents, offset = self._exponents[:, case], self._offset[case, row]
         weights = self._weights[:, case, row]
         first = weights * exponents
@@ -49,6 +64,11 @@ class ModalResponses:
             return offset + summed[0], summed[1], summed[2]
 
         return at
+
+    def _blocks(self, count: int) -> list[slice]:
+        """Parts of `count` instants, small enough that no array over instants and modes fills the memory."""
+        most = max(MOST_TERMS // max(len(self._exponents), 1), 1)
+        return [slice(first, first + most) for first in range(0, count, most)]
 
 
 def _bounds(size: FloatArray, turn: FloatArray, scale: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:

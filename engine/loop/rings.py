@@ -64,7 +64,8 @@ def components(linked: NDArray[np.bool_]) -> NDArray[np.int64]:
         joined = np.where(linked, label, len(linked)).min(axis=1)
         if np.array_equal(joined, label):
             break
-        label = joined
+        # Follow each label to its own label as well: long chains join in few rounds.
+        label = joined[joined]
     return label
 
 
