@@ -24,6 +24,9 @@ if TYPE_CHECKING:
 SENSIBLE = 20.0
 
 
+_CUT_SHORT = "the loop gain hardly falls off beside this dead time, so the response is known too loosely to be measured"
+
+
 @dataclass(frozen=True)
 class Scenario:
     """What the responses answer to."""
@@ -83,6 +86,9 @@ def read_time(loops: LoopSet, view: FrequencyView, scenario: Scenario) -> TimeVi
     excess = np.empty((loops.count, 3), dtype=np.int64)
     for family in families:
         excess[family.cases] = family.transfers.excess
+    for case in range(loops.count):
+        if _cut_short(view, case):
+            readings[case] = dict.fromkeys(MEASURES, without_value("not determinable", _CUT_SHORT))
     cases = tuple(
         CaseTime(each, _notices(excess[case].tolist(), _unsure(view, case))) for case, each in enumerate(readings)
     )
@@ -169,6 +175,12 @@ def _unsure(view: FrequencyView, case: int) -> bool:
     """Whether roots that matter to a stable response with dead time may be missing."""
     dominant = view.roots.dominant[case] if view.roots.dominant else None
     return view.cases[case].stable and dominant is not None and not (dominant.counted and dominant.faint)
+
+
+def _cut_short(view: FrequencyView, case: int) -> bool:
+    """Whether roots that still count are left out, so that a late crossing of a band could be missed."""
+    dominant = view.roots.dominant[case] if view.roots.dominant else None
+    return view.cases[case].stable and dominant is not None and not dominant.faint
 
 
 def _notices(excess: Sequence[int], unsure: bool) -> tuple[str, ...]:

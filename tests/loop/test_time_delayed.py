@@ -10,7 +10,9 @@ import pytest
 
 from engine.design.parse import parse_design
 from engine.design.resolve import loops_of
-from engine.loop.time_response import Scenario
+from engine.loop.frequency import read_frequency
+from engine.loop.loop_set import LoopSet
+from engine.loop.time_response import Scenario, read_time
 from engine.model.factored import Factored
 from tests.loop.time_views import factored, pair, readings_of, time_view
 from tests.outside.delayed_responses import DelayedSeries
@@ -189,3 +191,12 @@ def test_endlessly_many_unstable_roots_are_shown_for_the_first_dead_times() -> N
     for start, want in ((0.0, 0.0), (0.2, 1.5), (0.4, -0.75), (0.6, 2.625)):
         inside = (view.time_s >= start + 1e-9) & (view.time_s < start + 0.2 - 1e-9)
         np.testing.assert_allclose(view.command[0, inside], want, atol=1e-12)
+
+
+def test_what_hardly_falls_off_is_not_measured() -> None:
+    # By hand: |L| is 0.5 from 400 rad/s on, so after each dead time of 10 s the output jumps by half the last jump;
+    # the chain of roots that makes those jumps is longer than is summed, and a settling time could come out short.
+    loops = LoopSet((factored(0.5, [-1.0], [-400.0], 10.0),), factored(1.0, [], []))
+    (case,) = read_time(loops, read_frequency(loops), Scenario()).cases
+    assert {reading.state for reading in case.readings.values()} == {"not determinable"}
+    assert any("hardly falls off" in notice for notice in case.notices)
