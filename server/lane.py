@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import asyncio
-import gc
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from queue import SimpleQueue
