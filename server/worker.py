@@ -17,6 +17,7 @@ from multiprocessing.process import BaseProcess
 from typing import Any
 
 from engine.errors import DesignError, LoopwrightError
+from server.collector import settle_collector
 from server.error_shape import SURPRISE, RefusedError
 from server.quiet_numerics import quiet_numerics
 
@@ -112,6 +113,7 @@ def _work(line: Connection[Any, Any], niceness: int) -> None:
     import server.computing
     import server.live_answer  # noqa: F401  only a worker needs these two
 
+    settle_collector()
     line.send(_READY)
     while True:
         try:

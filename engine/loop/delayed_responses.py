@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.loop.delayed_steps import DelayedSteps
+from engine.loop.delayed_steps import DelayedSteps, powers_of
 from engine.loop.modal import ModalSums
 from engine.loop.modal_responses import ModalResponses, late_net
 from engine.loop.response_search import Follower, Glance, IntArray, Net, interval_bounds
@@ -107,7 +107,7 @@ class DelayedResponses:
     def _early_glance(self, case: IntArray, row: IntArray, at_s: FloatArray, length_s: FloatArray) -> Glance:
         step, since = self._place(case, at_s)
         steps = self.steps
-        powers = (since / steps.dead_time_s[case])[:, None] ** np.arange(steps.coefficients.shape[-1])
+        powers = powers_of(since / steps.dead_time_s[case], steps.coefficients.shape[-1])
         polynomials = (steps.coefficients[case, step, row] @ powers[:, :, None])[..., 0]
         value = (polynomials * np.exp(steps.rates[case] * since[:, None])).real.sum(axis=1)
         decay = np.exp(np.minimum(self.steps.rates[case].real * since[:, None], 50.0))
@@ -158,7 +158,7 @@ class DelayedResponses:
 
         def at(at_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
             since = at_s - begin
-            powers = (since / theta)[:, None] ** degree
+            powers = powers_of(since / theta, len(degree))
             polynomials = (stacked @ powers[:, :, None])[..., 0]
             found = (polynomials * np.exp(rates * since[:, None])).real.sum(axis=-1)
             return found[0], found[1], found[2]

@@ -25,7 +25,7 @@ from engine.model.factored import ComplexArray, FloatArray
 DEGREES = (24, 36, 56)
 LEFT_OUT = 1e-13
 # Link distances tried, in dead-time radians; the first whose rounding stays below this share of the peak is taken.
-LINKS = (0.8, 0.3, 2.0)
+LINKS = (0.5, 0.3, 0.8, 2.0)
 ROUNDING = 1e-10
 # e-folds to the right over all dead times that a circle may have.
 MOST_GROWTH = 14.0
@@ -69,7 +69,7 @@ class DelayedSteps:
     def at_shares(self, shares: FloatArray) -> FloatArray:
         """(c, 3, j·n) values at these shares (n,) of every dead time."""
         cases, delays, rows, groups, terms = self.coefficients.shape
-        powers = shares ** np.arange(terms)[:, None]
+        powers = powers_of(shares, terms).T
         flat = self.coefficients.reshape(-1, terms)
         growth = np.exp(self.rates[:, :, None] * self.dead_time_s[:, None, None] * shares)[:, None, None]
         real = (flat.real @ powers).reshape(cases, delays, rows, groups, -1) * growth.real
@@ -79,11 +79,17 @@ class DelayedSteps:
 
     def segment(self, case: int, step: int, since_s: FloatArray) -> FloatArray:
         """(3, n) values in one dead time of one case, `since_s` (n,) after its beginning."""
-        powers = (since_s / self.dead_time_s[case]) ** np.arange(self.coefficients.shape[-1])[:, None]
+        powers = powers_of(since_s / self.dead_time_s[case], self.coefficients.shape[-1]).T
         growth = np.exp(self.rates[case][:, None] * since_s)
         parts = (self.coefficients[case, step] @ powers) * growth
         total: FloatArray = parts.real.sum(axis=1)
         return total
+
+
+def powers_of(share: FloatArray, terms: int) -> FloatArray:
+    """(n, q) share^0 … share^(q−1), by multiplying on: a call of pow for each would cost ten times that."""
+    powers: FloatArray = np.vander(share, terms, increasing=True)
+    return powers
 
 
 def delayed_steps(

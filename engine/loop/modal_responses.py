@@ -29,6 +29,7 @@ class ModalResponses:
         # Modes along axis 0: sums then run in one order however many cases there are.
         self._exponents = np.ascontiguousarray(sums.exponents.T)
         self._weights = np.ascontiguousarray(sums.weights.transpose(2, 0, 1))
+        self._paces = np.abs(self._exponents)
         self._offset = sums.offset
         self._scale = scale
 
@@ -41,7 +42,7 @@ class ModalResponses:
         exponents, weights = self._exponents[:, case], self._weights[:, case, row]
         terms = weights * np.exp(exponents * at_s)
         value = self._offset[case, row] + np.add.reduce(terms.real, axis=0)
-        return Glance(value, *_bounds(np.abs(terms), np.abs(exponents) * length_s, self._scale[case, row]))
+        return Glance(value, *_bounds(np.abs(terms), self._paces[:, case] * length_s, self._scale[case, row]))
 
     def follow(self, case: IntArray, row: IntArray, inside_s: FloatArray) -> Follower:
         """See `Responses`."""

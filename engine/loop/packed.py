@@ -21,19 +21,21 @@ class RootTable:
     """(k, c, 1); −1 where padded."""
     mask: FloatArray
     """(k, c, 1); 1 for a root, 0 for padding."""
+    padded: bool
+    """Whether there is any padding."""
 
     def factors(self, s: ComplexArray) -> ComplexArray:
         """(k, c, n): s − root, and exactly 1 where padded; s is (c, n)."""
-        return self.mask * s - self.roots
+        return self.mask * s - self.roots if self.padded else s - self.roots
 
     def of_cases(self, case: NDArray[np.int64]) -> RootTable:
         """The lists of the cases named, one each."""
-        return RootTable(self.roots[:, case], self.mask[:, case])
+        return RootTable(self.roots[:, case], self.mask[:, case], self.padded)
 
     def scaled(self, scale: FloatArray) -> RootTable:
         """The roots divided by `scale` (c,)."""
         divided = np.where(self.mask > 0.0, self.roots / scale[:, None], -1.0)
-        return RootTable(divided, self.mask)
+        return RootTable(divided, self.mask, self.padded)
 
 
 def root_table(lists: Sequence[ComplexArray]) -> RootTable:
@@ -44,7 +46,7 @@ def root_table(lists: Sequence[ComplexArray]) -> RootTable:
     for case, each in enumerate(lists):
         roots[: len(each), case, 0] = each
         mask[: len(each), case, 0] = 1.0
-    return RootTable(roots, mask)
+    return RootTable(roots, mask, any(len(each) < longest for each in lists))
 
 
 def time_scales(models: Sequence[Factored]) -> FloatArray:

@@ -32,6 +32,7 @@ from engine.design.assess import assess_with_arrays
 from engine.design.parse import parse_design
 from engine.design.resolve import loops_of
 from engine.loop.loop_set import LoopSet
+from server.collector import settle_collector
 from tests.bench.live_designs import live_design
 
 DEAD_TIME_S = 0.004
@@ -98,6 +99,7 @@ def main() -> None:
     arrays = assess_with_arrays(designs[0])[1]
     horizon_s, samples = float(arrays["time_s"][-1]), len(arrays["time_s"])
     fine, error = same_curves(loops_of(designs[0]), arrays, horizon_s)
+    settle_collector()  # as the live worker does
     ours = median_ms(lambda step: assess_with_arrays(designs[step % 97]), steps)
     few = max(steps // 10, 10)
     script = median_ms(lambda step: plain_script(loops_of(designs[step % 97]), horizon_s, samples), few)
