@@ -8,8 +8,10 @@ import httpx
 import pytest
 from jsonschema import Draft202012Validator
 
+from engine.design.assess import assess
 from engine.design.parse import parse_design
 from engine.design.schemas import json_schemas
+from engine.design.transfer_function import hand_over
 from tests.server.asking import assert_refused, client
 from tests.server.faulty_designs import FAULTY
 
@@ -53,6 +55,20 @@ def test_the_models_and_requirements_of_the_demos_fit_theirs(demo_design: dict[s
         assert _faults("model", case["model"]) == []
     for row in demo_design["requirements"]:
         assert _faults("requirement", row) == []
+
+
+def test_what_is_written_fits_its_schema(demo_design: dict[str, Any]) -> None:
+    design = parse_design(demo_design)
+    assert _faults("assessment", assess(design)) == []
+    assert _faults("assessment", assess(design, curves=True)) == []
+    handed_over = hand_over(design)
+    assert _faults("transfer-function", handed_over) == []
+    # And the schema would notice: a reading without its state, a root that is no pair.
+    spoiled = assess(design)
+    del spoiled["cases"][0]["readings"]["phase_margin_deg"]["state"]
+    assert _faults("assessment", spoiled) != []
+    handed_over["compensator"]["poles"] = [[1.0]]
+    assert _faults("transfer-function", handed_over) != []
 
 
 _STRUCTURAL = ("no object", "wrong type", "unknown field", "unknown stage", "format of tomorrow", "no plant case",
